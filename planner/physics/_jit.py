@@ -4,7 +4,26 @@
 since holes in the terrain are NaN and must stay so.
 """
 
+from collections.abc import Callable
+from typing import Any
+
 from numba import njit
+from numba import vectorize as numba_vectorize
 
 scalar = njit(cache=True, error_model="numpy", nogil=True)
 parallel = njit(cache=True, error_model="numpy", nogil=True, parallel=True)
+
+
+def over_arrays(scalar_function: Any) -> Callable[..., Any]:
+    """The same formula over arrays of any shape, broadcast, in float64."""
+    arguments = scalar_function.py_func.__code__.co_argcount
+    signature = f"float64({', '.join(['float64'] * arguments)})"
+    compiled: Any = None
+
+    def call(*values: Any) -> Any:
+        nonlocal compiled
+        if compiled is None:  # compiled at the first call, not at import
+            compiled = numba_vectorize([signature], cache=True)(scalar_function.py_func)
+        return compiled(*values)
+
+    return call

@@ -1,0 +1,69 @@
+"""Free-space basic transmission loss, ITU-R P.525."""
+
+import math
+from typing import Any
+
+from numpy.typing import ArrayLike
+
+from planner.physics._jit import over_arrays, scalar
+from planner.units import SPEED_OF_LIGHT_M_S
+
+
+@scalar
+def wavelength_m_scalar(frequency_mhz: float) -> float:
+    return SPEED_OF_LIGHT_M_S / (frequency_mhz * 1e6)
+
+
+@scalar
+def free_space_loss_db_scalar(distance_m: float, frequency_mhz: float) -> float:
+    if not distance_m > 0.0:
+        return math.nan
+    return 20.0 * math.log10(4.0 * math.pi * distance_m / wavelength_m_scalar(frequency_mhz))
+
+
+_free_space_loss_db = over_arrays(free_space_loss_db_scalar)
+_wavelength_m = over_arrays(wavelength_m_scalar)
+
+
+def wavelength_m(frequency_mhz: ArrayLike) -> Any:
+    """Wavelength in vacuum. [m]
+
+    Parameters
+    ----------
+    frequency_mhz : float or array, any shape
+        Frequency, above 0. [MHz]
+
+    Returns
+    -------
+    float or array, same shape. NaN gives NaN.
+    """
+    return _wavelength_m(frequency_mhz)
+
+
+def free_space_loss_db(distance_m: ArrayLike, frequency_mhz: ArrayLike) -> Any:
+    r"""Free-space basic transmission loss between isotropic antennas. [dB]
+
+    Parameters
+    ----------
+    distance_m : float or array, any shape
+        Distance along the ray (slant distance). [m]
+    frequency_mhz : float or array, broadcast against ``distance_m``
+        Frequency, above 0. [MHz]
+
+    Returns
+    -------
+    float or array, broadcast shape. NaN where the distance is NaN, zero or negative: a loss
+    between two antennas in one place has no meaning.
+
+    Notes
+    -----
+    .. math:: L = 20 \log_{10}(4 \pi d / \lambda)
+
+    Holds in the far field of both antennas. The Recommendation also prints the rounded form
+    32.4 + 20log f(MHz) + 20log d(km); this function uses the exact one, 0.048 dB higher.
+
+    References
+    ----------
+    ITU-R P.525-4 (2019), equation (3) and (4).
+    """
+    return _free_space_loss_db(distance_m, frequency_mhz)

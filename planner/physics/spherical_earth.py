@@ -1,0 +1,150 @@
+"""Diffraction over a smooth spherical earth, ITU-R P.526-15 section 3.
+
+Written as in P.1812-7 section 4.3.2 and 4.3.3, which repeats P.526 with the units used here.
+Heights in metres above the smooth surface, distances and radii in km, frequency in GHz inside.
+"""
+
+import math
+
+from planner.physics._jit import scalar
+
+# Electrical constants of the ground, ITU-R P.1812-7 section 4.3.3 (relative permittivity, S/m).
+LAND_PERMITTIVITY, LAND_CONDUCTIVITY_S_M = 22.0, 0.003
+SEA_PERMITTIVITY, SEA_CONDUCTIVITY_S_M = 80.0, 5.0
+
+
+@scalar
+def _height_gain_db(scaled_height: float, beta: float, normalised_admittance: float) -> float:
+    """G(Y) of P.526-15 equations (18) and (18a), with its lower limit."""
+    b = beta * scaled_height
+    if b > 2.0:
+        gain = 17.6 * math.sqrt(b - 1.1) - 5.0 * math.log10(b - 1.1) - 8.0
+    else:
+        gain = 20.0 * math.log10(b + 0.1 * b * b * b)
+    return max(gain, 2.0 + 20.0 * math.log10(normalised_admittance))
+
+
+@scalar
+def _first_term_loss_db(
+    distance_km: float,
+    tx_height_m: float,
+    rx_height_m: float,
+    radius_km: float,
+    frequency_ghz: float,
+    vertical: bool,
+    permittivity: float,
+    conductivity_s_m: float,
+) -> float:
+    """First term of the residue series, P.526-15 equations (13) to (18)."""
+    loss_term = (18.0 * conductivity_s_m / frequency_ghz) ** 2
+    admittance = (
+        0.036
+        * (radius_km * frequency_ghz) ** (-1.0 / 3.0)
+        * ((permittivity - 1.0) ** 2 + loss_term) ** -0.25
+    )
+    if vertical:
+        admittance *= math.sqrt(permittivity**2 + loss_term)
+    k2 = admittance * admittance
+    k4 = k2 * k2
+    beta = (1.0 + 1.6 * k2 + 0.67 * k4) / (1.0 + 4.5 * k2 + 1.53 * k4)
+    x = 21.88 * beta * (frequency_ghz / radius_km**2) ** (1.0 / 3.0) * distance_km
+    height_scale = 0.9575 * beta * (frequency_ghz**2 / radius_km) ** (1.0 / 3.0)
+    if x >= 1.6:
+        distance_term = 11.0 + 10.0 * math.log10(x) - 17.6 * x
+    else:
+        distance_term = -20.0 * math.log10(x) - 5.6488 * x**1.425
+    return (
+        -distance_term
+        - _height_gain_db(height_scale * tx_height_m, beta, admittance)
+        - _height_gain_db(height_scale * rx_height_m, beta, admittance)
+    )
+
+
+@scalar
+def _first_term_mixed_loss_db(
+    distance_km: float,
+    tx_height_m: float,
+    rx_height_m: float,
+    radius_km: float,
+    frequency_ghz: float,
+    vertical: bool,
+    sea_fraction: float,
+) -> float:
+    """First term over land and sea, mixed by the share of sea; P.1812-7 equation (29)."""
+    loss = 0.0
+    if sea_fraction < 1.0:
+        loss += (1.0 - sea_fraction) * _first_term_loss_db(
+            distance_km,
+            tx_height_m,
+            rx_height_m,
+            radius_km,
+            frequency_ghz,
+            vertical,
+            LAND_PERMITTIVITY,
+            LAND_CONDUCTIVITY_S_M,
+        )
+    if sea_fraction > 0.0:
+        loss += sea_fraction * _first_term_loss_db(
+            distance_km,
+            tx_height_m,
+            rx_height_m,
+            radius_km,
+            frequency_ghz,
+            vertical,
+            SEA_PERMITTIVITY,
+            SEA_CONDUCTIVITY_S_M,
+        )
+    return loss
+
+
+@scalar
+def spherical_earth_loss_db_scalar(
+    distance_m: float,
+    tx_height_m: float,
+    rx_height_m: float,
+    earth_radius_m: float,
+    wavelength_m: float,
+    frequency_mhz: float,
+    vertical: bool,
+    sea_fraction: float,
+) -> float:
+    """Diffraction loss over a smooth sphere, 0 or more; P.526-15 section 3.2.
+
+    Heights are above the smooth surface and positive. NaN gives NaN.
+    """
+    d = distance_m / 1000.0
+    radius = earth_radius_m / 1000.0
+    f = frequency_mhz / 1000.0
+    horizon = math.sqrt(2.0 * radius) * (
+        math.sqrt(0.001 * tx_height_m) + math.sqrt(0.001 * rx_height_m)
+    )
+    if d >= horizon:
+        return _first_term_mixed_loss_db(
+            d, tx_height_m, rx_height_m, radius, f, vertical, sea_fraction
+        )
+    # Within the horizon: smallest clearance over the curved surface, equations (22) to (25).
+    heights = tx_height_m + rx_height_m
+    c = (tx_height_m - rx_height_m) / heights
+    m = 250.0 * d * d / (radius * heights)
+    b = (
+        2.0
+        * math.sqrt((m + 1.0) / (3.0 * m))
+        * math.cos(math.pi / 3.0 + math.acos(1.5 * c * math.sqrt(3.0 * m / (m + 1.0) ** 3)) / 3.0)
+    )
+    d1 = 0.5 * d * (1.0 + b)
+    d2 = d - d1
+    clearance = (
+        (tx_height_m - 500.0 * d1 * d1 / radius) * d2
+        + (rx_height_m - 500.0 * d2 * d2 / radius) * d1
+    ) / d
+    required = 17.456 * math.sqrt(d1 * d2 * wavelength_m / d)
+    if clearance > required:
+        return 0.0
+    # Equations (26) and (27): a smaller earth whose horizon is just at this distance.
+    modified_radius = 500.0 * (d / (math.sqrt(tx_height_m) + math.sqrt(rx_height_m))) ** 2
+    loss = _first_term_mixed_loss_db(
+        d, tx_height_m, rx_height_m, modified_radius, f, vertical, sea_fraction
+    )
+    if loss < 0.0:
+        return 0.0
+    return (1.0 - clearance / required) * loss
