@@ -94,11 +94,14 @@ class Grid:
 def bilinear(array: NDArray[np.float32], row: float, col: float) -> float:
     """Value between the four cell centres around fractional (row, col), in double precision.
 
-    NaN when a corner that has weight is NaN or outside. No check of its own: the array is 2D.
+    In the outer halves of the outer cells the edge row or column continues. NaN outside the array,
+    and where a corner that has weight is NaN.
     """
     rows, cols = array.shape
-    if not (0.0 <= row <= rows - 1.0 and 0.0 <= col <= cols - 1.0):
+    if not (-0.5 <= row <= rows - 0.5 and -0.5 <= col <= cols - 0.5):
         return np.nan
+    row = min(max(row, 0.0), rows - 1.0)
+    col = min(max(col, 0.0), cols - 1.0)
     top = int(row)
     left = int(col)
     down = row - top

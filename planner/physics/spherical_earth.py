@@ -98,6 +98,30 @@ def _first_term_mixed_loss_db(
 
 
 @scalar
+def nearest_clearance_m_scalar(
+    distance_m: float, tx_height_m: float, rx_height_m: float, earth_radius_m: float
+) -> tuple[float, float]:
+    """Where the ray clears the sphere least and by how much; P.526-15 equations (22) to (25).
+
+    Returns the point's distance from the transmitter [m] and the clearance there [m]. The point is
+    the one with the largest nu, which is also the geometric reflection point.
+    """
+    heights = tx_height_m + rx_height_m
+    c = (tx_height_m - rx_height_m) / heights
+    m = distance_m * distance_m / (4.0 * earth_radius_m * heights)
+    # At most 1 in exact arithmetic, reached when one height vanishes; rounding may pass it.
+    cosine = min(max(1.5 * c * math.sqrt(3.0 * m / (m + 1.0) ** 3), -1.0), 1.0)
+    b = 2.0 * math.sqrt((m + 1.0) / (3.0 * m)) * math.cos(math.pi / 3.0 + math.acos(cosine) / 3.0)
+    d1 = 0.5 * distance_m * (1.0 + b)
+    d2 = distance_m - d1
+    clearance = (
+        (tx_height_m - d1 * d1 / (2.0 * earth_radius_m)) * d2
+        + (rx_height_m - d2 * d2 / (2.0 * earth_radius_m)) * d1
+    ) / distance_m
+    return d1, clearance
+
+
+@scalar
 def spherical_earth_loss_db_scalar(
     distance_m: float,
     tx_height_m: float,
@@ -122,21 +146,12 @@ def spherical_earth_loss_db_scalar(
         return _first_term_mixed_loss_db(
             d, tx_height_m, rx_height_m, radius, f, vertical, sea_fraction
         )
-    # Within the horizon: smallest clearance over the curved surface, equations (22) to (25).
-    heights = tx_height_m + rx_height_m
-    c = (tx_height_m - rx_height_m) / heights
-    m = 250.0 * d * d / (radius * heights)
-    b = (
-        2.0
-        * math.sqrt((m + 1.0) / (3.0 * m))
-        * math.cos(math.pi / 3.0 + math.acos(1.5 * c * math.sqrt(3.0 * m / (m + 1.0) ** 3)) / 3.0)
+    # Within the horizon: the less the ray clears the sphere, the more of the first term counts.
+    point_m, clearance = nearest_clearance_m_scalar(
+        distance_m, tx_height_m, rx_height_m, earth_radius_m
     )
-    d1 = 0.5 * d * (1.0 + b)
+    d1 = point_m / 1000.0
     d2 = d - d1
-    clearance = (
-        (tx_height_m - 500.0 * d1 * d1 / radius) * d2
-        + (rx_height_m - 500.0 * d2 * d2 / radius) * d1
-    ) / d
     required = 17.456 * math.sqrt(d1 * d2 * wavelength_m / d)
     if clearance > required:
         return 0.0

@@ -1,1 +1,16 @@
-"""TODO"""
+"""Paths over terrain: one exact path between two places, and the field of all paths of a mast."""
+
+from planner.sweep.field import PathField, path_field
+from planner.sweep.path import Path, path_between
+from planner.sweep.state import COMPUTED, CROSSES_HOLE, NO_DATA, OUT_OF_RANGE
+
+__all__ = [
+    "COMPUTED",
+    "CROSSES_HOLE",
+    "NO_DATA",
+    "OUT_OF_RANGE",
+    "Path",
+    "PathField",
+    "path_between",
+    "path_field",
+]
