@@ -109,9 +109,16 @@ def nearest_clearance_m_scalar(
     heights = tx_height_m + rx_height_m
     c = (tx_height_m - rx_height_m) / heights
     m = distance_m * distance_m / (4.0 * earth_radius_m * heights)
-    # At most 1 in exact arithmetic, reached when one height vanishes; rounding may pass it.
-    cosine = min(max(1.5 * c * math.sqrt(3.0 * m / (m + 1.0) ** 3), -1.0), 1.0)
-    b = 2.0 * math.sqrt((m + 1.0) / (3.0 * m)) * math.cos(math.pi / 3.0 + math.acos(cosine) / 3.0)
+    if m < 1e-12:  # a few centimetres: the root below would be lost in rounding, its limit is c
+        b = c
+    else:
+        # At most 1 in exact arithmetic, reached when one height vanishes; rounding may pass it.
+        cosine = min(max(1.5 * c * math.sqrt(3.0 * m / (m + 1.0) ** 3), -1.0), 1.0)
+        b = (
+            2.0
+            * math.sqrt((m + 1.0) / (3.0 * m))
+            * math.cos(math.pi / 3.0 + math.acos(cosine) / 3.0)
+        )
     d1 = 0.5 * distance_m * (1.0 + b)
     d2 = distance_m - d1
     clearance = (

@@ -11,7 +11,7 @@ from planner.physics.fresnel import fresnel_parameter_scalar
 from planner.physics.smooth_surface import fit_increments, smooth_surface_ends
 from planner.sweep.hull import highest_above_slope, tangent_from_right
 from planner.sweep.profile_extremes import closest_approach_nu, excess_spherical_loss_db
-from planner.sweep.state import Link, Mast, State
+from planner.sweep.state import LEAST_DISTANCE_M, Link, Mast, State
 from planner.terrain import bilinear
 
 # The last samples before a cell lie on the cell's own straight line to the mast, where its exact
@@ -73,7 +73,7 @@ def cell_loss_and_slope(
 
     The first ``surface_count`` samples count with their obstacles and are on the hull, the rest,
     near the receiver, as bare ground; ``own_count`` samples of the cell's own line follow. The
-    slopes are the steepest seen from the mast so far.
+    slopes are the steepest seen from the mast so far. NaN where both antennas are in one place.
     """
     distance = state.distance
     tx_height = link.tx_height_m
@@ -186,5 +186,7 @@ def cell_loss_and_slope(
         link.vertical,
     )
     slant = math.sqrt(total * total + (rx_height - tx_height) ** 2)
+    if slant < LEAST_DISTANCE_M:
+        return math.nan, math.nan
     loss = free_space_loss_db_scalar(slant, link.frequency_mhz) + actual + excess
     return loss, max(tx_slope, direct)

@@ -13,7 +13,7 @@ from planner.geodesy import LocalFrame, local_frame
 from planner.physics.diffraction import Polarization
 from planner.physics.free_space import free_space_loss_db_scalar, wavelength_m_scalar
 from planner.sweep.radial import sweep_radials
-from planner.sweep.state import COMPUTED, NO_DATA, OUT_OF_RANGE, Link, Mast
+from planner.sweep.state import COMPUTED, LEAST_DISTANCE_M, NO_DATA, OUT_OF_RANGE, Link, Mast
 from planner.terrain import Terrain
 from planner.units import EARTH_RADIUS_KM
 
@@ -188,7 +188,7 @@ def _compute_own_cell(
         return
     out = (row - mast.row_start, col - mast.col_start)
     rise = float(ground[row, col]) + link.receiver_height_m - link.tx_height_m
-    if math.isnan(rise) or rise == 0.0:  # two antennas in one place have no path
+    if not abs(rise) >= LEAST_DISTANCE_M:
         status[out] = NO_DATA
         return
     path_loss[out] = free_space_loss_db_scalar(abs(rise), link.frequency_mhz)

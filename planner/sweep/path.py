@@ -11,6 +11,7 @@ from planner.physics.diffraction import DiffractionResult, Polarization, delta_b
 from planner.physics.free_space import free_space_loss_db_scalar, wavelength_m_scalar
 from planner.physics.fresnel import fresnel_radius_m
 from planner.sweep.sampling import sampled_line
+from planner.sweep.state import LEAST_DISTANCE_M
 from planner.terrain import Terrain
 from planner.units import EARTH_RADIUS_KM
 
@@ -136,7 +137,7 @@ def path_between(
         if not reason and not grid.contains(row, col):
             reason = f"the {name} end lies outside the terrain"
     if not reason and not distance > 0.0:
-        reason = "both ends are the same place"
+        reason = "both ends are in one place"
     if not reason:
         intervals = max(1, math.ceil(math.hypot(b_row - a_row, b_col - a_col) - 1e-9))
         frame = local_frame(grid.crs, a_east, a_north)
@@ -167,6 +168,8 @@ def path_between(
     tx_height = float(ground[0]) + a_height_m
     rx_height = float(ground[-1]) + b_height_m
     slant = math.hypot(distance, rx_height - tx_height)
+    if not reason and slant < LEAST_DISTANCE_M:
+        reason = "both antennas are in one place"
     free_space = free_space_loss_db_scalar(slant, frequency_mhz)
     diffraction = NOT_COMPUTED
     clear, ratio, where = math.nan, math.nan, math.nan

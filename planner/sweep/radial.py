@@ -168,7 +168,7 @@ def _walk(
                 )
                 path_loss[out] = loss
                 elevation[out] = math.degrees(math.atan(slope))
-                status[out] = COMPUTED
+                status[out] = NO_DATA if math.isnan(loss) else COMPUTED
         line += forward
 
 

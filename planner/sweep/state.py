@@ -8,6 +8,10 @@ from numpy.typing import NDArray
 COMPUTED, OUT_OF_RANGE, NO_DATA, CROSSES_HOLE = 0, 1, 2, 3
 
 
+# Nearer than this two antennas are in one place and have no path between them.
+LEAST_DISTANCE_M = 1.0
+
+
 class Mast(NamedTuple):
     """Where the mast stands on the grid and how the grid's lengths relate to true ones."""
 
