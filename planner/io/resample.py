@@ -18,7 +18,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.io.mosaic import Mosaic
-from planner.io.rasters import Tally
+from planner.io.rasters import Tally, coordinates
 from planner.physics._jit import scalar
 from planner.terrain import Grid
 
@@ -54,6 +54,12 @@ def heights_on_grid(
             if progress is not None:
                 progress((number + done / heights.size) / len(sources))
     return heights
+
+
+def heights_as_they_are(mosaic: Mosaic, grid: Grid, tally: Tally) -> NDArray[np.float32]:
+    """Heights in metres, float32 [rows, cols], of a grid that is a window of the lattice."""
+    col, row = coordinates(~mosaic.transform, grid.transform.c, grid.transform.f)
+    return mosaic.heights_m(round(float(row)), round(float(col)), grid.rows, grid.cols, tally)
 
 
 def averaged_block(mosaic: Mosaic, grid: Grid) -> tuple[int, int]:

@@ -23,7 +23,7 @@ from numpy.typing import NDArray
 from planner.errors import Problem, TerrainError
 from planner.geodesy import transformer_to_wgs84, true_bearing_and_distance
 from planner.io.rasters import Raster, Tally, coordinates, read_raster_facts
-from planner.io.resample import averaged_block, heights_on_grid
+from planner.io.resample import averaged_block, heights_as_they_are, heights_on_grid
 from planner.io.terrain_grid import Layout, centre_name, terrain_layout
 from planner.terrain import Grid, Kind, Terrain, fill_small_holes
 
@@ -119,7 +119,11 @@ def read_terrain(
     with_obstacles = source.obstacles is not None and source.kind != "surface"
     share = 0.5 if with_obstacles else 1.0
     report = progress or _no_progress
-    ground = heights_on_grid(layout.ground, grid, tally, lambda done: report(share * done))
+    if layout.unresampled:
+        ground = heights_as_they_are(layout.ground[0], grid, tally)
+        report(share)
+    else:
+        ground = heights_on_grid(layout.ground, grid, tally, lambda done: report(share * done))
     notes = tally.warnings()
     if not layout.unresampled:
         blocks = [averaged_block(mosaic, grid) for mosaic in layout.ground]
