@@ -1,1 +1,32 @@
-"""TODO"""
+"""Antenna patterns: gain for any direction, published formulas, measured cuts, mounting.
+
+Directions off the boresight: azimuth offset clockwise seen from above, elevation positive upwards.
+Downtilt is positive downwards; mechanical tilt turns the antenna, electrical tilt bends the beam.
+"""
+
+from planner.antenna.beamwidth import half_power_edges_deg
+from planner.antenna.f1336 import estimated_elevation_beamwidth_deg
+from planner.antenna.f1336_sector import F1336Sector
+from planner.antenna.formula import FORMULAS, formula_pattern
+from planner.antenna.lookup import GainTable, gain_table
+from planner.antenna.mounting import antenna_direction_deg, mounted_gain_dbi
+from planner.antenna.pattern import Isotropic, Pattern
+from planner.antenna.tr36814 import Tr36814Sector
+from planner.antenna.two_cut import TwoCutPattern, two_cut_pattern
+
+__all__ = [
+    "FORMULAS",
+    "F1336Sector",
+    "GainTable",
+    "Isotropic",
+    "Pattern",
+    "Tr36814Sector",
+    "TwoCutPattern",
+    "antenna_direction_deg",
+    "estimated_elevation_beamwidth_deg",
+    "formula_pattern",
+    "gain_table",
+    "half_power_edges_deg",
+    "mounted_gain_dbi",
+    "two_cut_pattern",
+]
