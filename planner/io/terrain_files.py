@@ -244,7 +244,7 @@ def _refuse_centres_on_holes(
     problems = [
         Problem(
             where=centre_name(int(number), centres, names),
-            found="a place where the terrain has no height (a hole, or the very edge of the data)",
+            found="a place where the terrain has no height (a hole)",
             allowed="a place with heights all around",
             advice="Move it, use a raster that is whole there, or let small holes be filled",
         )
