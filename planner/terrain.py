@@ -106,9 +106,7 @@ def bilinear(array: NDArray[np.float32], row: float, col: float) -> float:
     left = int(col)
     down = row - top
     right = col - left
-    value = 0.0
-    if down < 1.0 and right < 1.0:
-        value += (1.0 - down) * (1.0 - right) * array[top, left]
+    value = (1.0 - down) * (1.0 - right) * array[top, left]
     if right > 0.0:
         value += (1.0 - down) * right * array[top, left + 1]
     if down > 0.0:
