@@ -314,18 +314,8 @@ def horizontal_crs(crs: CRS) -> CRS:
     return crs.to_2d() if len(crs.axis_info) == 3 else crs
 
 
-def grid_trouble(
-    crs: CRS,
-    bounds: tuple[float, float, float, float],
-    *,
-    smallest_scale: float = USABLE_SCALE[0],
-    largest_scale: float = USABLE_SCALE[1],
-) -> str:
-    """Why a CRS cannot be the metric grid over (left, bottom, right, top); "" if it can.
-
-    It must be projected, in metres, east and north, conformal, and its scale on the WGS 84
-    ellipsoid must stay within the two limits at 5 by 5 points over the bounds.
-    """
+def projection_trouble(crs: CRS) -> str:
+    """Why a CRS cannot be a metric grid wherever it is used; "" if it can."""
     flat = horizontal_crs(crs)
     base = flat.source_crs if flat.is_bound and flat.source_crs is not None else flat
     if not base.is_projected or base.coordinate_operation is None:
@@ -339,6 +329,24 @@ def grid_trouble(
         word in method for word in _NOT_CONFORMAL_WORDS
     ):
         return f"its projection ({base.coordinate_operation.method_name}) is not conformal"
+    return ""
+
+
+def grid_trouble(
+    crs: CRS,
+    bounds: tuple[float, float, float, float],
+    *,
+    smallest_scale: float = USABLE_SCALE[0],
+    largest_scale: float = USABLE_SCALE[1],
+) -> str:
+    """Why a CRS cannot be the metric grid over (left, bottom, right, top); "" if it can.
+
+    It must be projected, in metres, east and north, conformal, and its scale on the WGS 84
+    ellipsoid must stay within the two limits at 5 by 5 points over the bounds.
+    """
+    trouble = projection_trouble(crs)
+    if trouble:
+        return trouble
     left, bottom, right, top = bounds
     easting, northing = np.meshgrid(np.linspace(left, right, 5), np.linspace(bottom, top, 5))
     measured = _distortion(crs, easting, northing)

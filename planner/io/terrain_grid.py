@@ -15,6 +15,7 @@ from planner.geodesy import (
     grid_is_usable,
     grid_trouble,
     local_frame,
+    projection_trouble,
     transformer_from_wgs84,
     utm_or_ups_crs,
 )
@@ -128,6 +129,8 @@ def _named_crs(text: str, centres: Sequence[Place], radius_m: float) -> CRS:
     except CRSError:
         named, trouble = None, "it is not known"
     if named is not None:
+        trouble = projection_trouble(named)
+    if named is not None and not trouble:
         try:
             box = _needed_box(named, centres, radius_m)
         except TerrainError:
