@@ -107,7 +107,7 @@ def test_nan_and_shapes() -> None:
     expected = np.array([[-66.5, np.nan], [-76.5, -93.5]])
     np.testing.assert_allclose(expected, np.round(actual, 9))
     noise = thermal_noise_dbm(np.array([np.nan, 1.0, np.nan, 20.0, 1.0]))
-    assert [True, False, True, False, False] == np.isnan(noise).tolist()
+    assert np.isnan(noise).tolist() == [True, False, True, False, False]
 
 
 @pytest.mark.parametrize("bandwidth_mhz", [0.0, -1.0])

@@ -133,7 +133,7 @@ def gain_table(
     Within 30 dB of the peak the table is within 0.05 dB of the exact gain, save where a formula
     itself steps (ITU-R F.1336 does by 0.1 to 0.3 dB, at the join of main beam and side lobes):
     there the step is drawn out over 1/32 degree. At the antenna's own zenith and nadir, where a
-    gain may depend on an azimuth that has no meaning there, nothing is promised within 1 degree.
+    gain may depend on an azimuth that has no meaning there, nothing is promised within 1.5 degrees.
     """
     azimuths, elevations = _nodes(pattern, electrical_downtilt_deg)
     gain_dbi = pattern.gain(
@@ -181,9 +181,9 @@ def _nodes(
     bin_deg = 1.0 / BINS_PER_DEG
     elevations = np.arange(-90.0, 90.0 + bin_deg, bin_deg)
     width_deg = min(pattern.azimuth_beamwidth_deg, 120.0)
-    sides = width_deg * np.linspace(0.0, 1.5, 48)
+    sides = width_deg * np.linspace(0.0, 1.5, 80)
     upright = pattern.gain(
-        np.concatenate((sides, -sides[1::6], [180.0]))[:, np.newaxis],
+        np.concatenate((sides, -sides[1::16], [180.0]))[:, np.newaxis],
         elevations[np.newaxis, :],
         electrical_downtilt_deg=electrical_downtilt_deg,
     )

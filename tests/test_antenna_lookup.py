@@ -1,0 +1,184 @@
+"""The table of gains against the exact pattern."""
+
+from dataclasses import replace
+
+import numpy as np
+import pytest
+from numba import prange
+
+from planner.antenna import (
+    GainTable,
+    Isotropic,
+    Pattern,
+    formula_pattern,
+    gain_table,
+    mounted_gain_dbi,
+    two_cut_pattern,
+)
+from planner.antenna.lookup import GainArrays, table_gain_dbi
+from planner.physics._jit import parallel
+
+
+def narrow_two_cut() -> Pattern:
+    """A beam of 6 by 3 degrees with deep side lobes, points every degree."""
+
+    def levels(angles_deg: np.ndarray, beamwidth_deg: float) -> np.ndarray:
+        lobes = np.abs(np.sinc(0.886 * angles_deg / beamwidth_deg))
+        return np.clip(20.0 * np.log10(lobes + 1e-9), -45.0, 0.0)
+
+    around, upright = np.arange(-180.0, 180.0), np.arange(-90.0, 91.0)
+    return two_cut_pattern(
+        name="narrow",
+        gain_dbi=30.0,
+        horizontal_angle_deg=around,
+        horizontal_level_db=levels(around, 6.0),
+        vertical_angle_deg=upright,
+        vertical_level_db=levels(upright, 3.0),
+    )
+
+
+def formula(name: str, **given: object) -> Pattern:
+    beams = {"gain_dbi": 17.0, "azimuth_beamwidth_deg": 65.0, "elevation_beamwidth_deg": 7.0}
+    return formula_pattern("panel", name, **({"frequency_mhz": 5600.0} | beams | given))
+
+
+# Pattern and the largest step that the formula itself has, which no table can follow.
+PATTERNS: dict[str, tuple[Pattern, float]] = {
+    "TR 36.814": (formula("TR 36.814"), 0.0),
+    "F.1336 average": (formula("F.1336-5", azimuth_beamwidth_deg=90.0), 0.33),
+    "F.1336 peak": (formula("F.1336-5", side_lobes="peak"), 0.16),
+    "F.1336 above 6 GHz": (formula("F.1336-5", frequency_mhz=24000.0), 0.0),
+    "narrow two-cut": (narrow_two_cut(), 0.0),
+    "isotropic": (Isotropic(name="whip", gain_dbi=2.15), 0.0),
+}
+TILTS_DEG = ((0.0, 0.0), (0.0, 4.0), (2.0, 0.0), (10.0, -3.0))
+AZIMUTH_DEG = 20.3
+
+
+@parallel
+def table_gains(
+    arrays: GainArrays, azimuth_deg: np.ndarray, elevation_deg: np.ndarray
+) -> np.ndarray:
+    gains = np.empty(azimuth_deg.size)
+    for index in prange(azimuth_deg.size):
+        gains[index] = table_gain_dbi(arrays, azimuth_deg[index], elevation_deg[index])
+    return gains
+
+
+def looked_up(table: GainTable, azimuth_deg: np.ndarray, elevation_deg: np.ndarray) -> np.ndarray:
+    offset = np.broadcast_to(azimuth_deg, np.shape(elevation_deg)) - table.azimuth_deg
+    return table_gains(table.arrays, offset, np.asarray(elevation_deg, dtype=float))
+
+
+def directions(number: int) -> tuple[np.ndarray, np.ndarray]:
+    """Random directions down to 60 degrees, most of them near the horizon as cells are."""
+    rng = np.random.default_rng(11)
+    near, far = rng.normal(-2.0, 6.0, number), rng.uniform(-60.0, 60.0, number)
+    elevations = np.where(rng.random(number) < 0.7, near, far)
+    return rng.uniform(0.0, 360.0, number), np.clip(elevations, -60.0, 60.0)
+
+
+@pytest.mark.parametrize(("mechanical", "electrical"), TILTS_DEG)
+@pytest.mark.parametrize(("pattern", "step_db"), PATTERNS.values(), ids=PATTERNS.keys())
+def test_table_is_within_a_twentieth_of_a_db(
+    pattern: Pattern, step_db: float, mechanical: float, electrical: float
+) -> None:
+    """Within 30 dB of the peak the table keeps to 0.05 dB, but for the formulas' own steps."""
+    tilts = {"mechanical_downtilt_deg": mechanical, "electrical_downtilt_deg": electrical}
+    azimuths, elevations = directions(200_000)
+    exact = mounted_gain_dbi(
+        pattern,
+        true_azimuth_deg=azimuths,
+        elevation_deg=elevations,
+        azimuth_deg=AZIMUTH_DEG,
+        **tilts,
+    )
+    table = gain_table(pattern, azimuth_deg=AZIMUTH_DEG, **tilts)
+    error = np.abs(looked_up(table, azimuths, elevations) - exact)[exact > pattern.gain_dbi - 30.0]
+    assert error.size > 10_000 or pattern.name == "narrow"
+    assert error.max() <= 0.05 + step_db
+    assert np.mean(error > 0.05) <= (0.002 if step_db else 0.0)
+
+
+@pytest.mark.parametrize("tilt_deg", [0.0, 5.0])
+def test_steep_directions(tilt_deg: float) -> None:
+    """Up to 1.5 degrees from the antenna's own zenith and nadir the table holds, tilted or not."""
+    pattern, _ = PATTERNS["TR 36.814"]
+    azimuths = np.random.default_rng(2).uniform(0.0, 360.0, 20_000)
+    elevations = np.random.default_rng(3).uniform(-90.0, -50.0, 20_000)
+    exact = mounted_gain_dbi(
+        pattern, true_azimuth_deg=azimuths, elevation_deg=elevations, azimuth_deg=AZIMUTH_DEG,
+        mechanical_downtilt_deg=tilt_deg, electrical_downtilt_deg=0.0,
+    )  # fmt: skip
+    table = gain_table(pattern, azimuth_deg=AZIMUTH_DEG, mechanical_downtilt_deg=tilt_deg)
+    down = np.radians(AZIMUTH_DEG)
+    nadir = np.radians(tilt_deg) * np.array([-np.cos(down), -np.sin(down)])  # leans back
+    flat = np.radians(90.0 + elevations) * np.array(
+        [np.cos(np.radians(azimuths)), np.sin(np.radians(azimuths))]
+    )
+    away = np.degrees(np.hypot(*(flat - nadir[:, np.newaxis]))) > 1.5
+    error = np.abs(looked_up(table, azimuths, elevations) - exact)
+    assert error[away].max() <= 0.05
+
+
+def test_no_seam_at_north_and_whole_turns() -> None:
+    """Across 0 and 360 degrees the gain runs on, and whole turns change nothing."""
+    pattern, _ = PATTERNS["F.1336 average"]
+    for azimuth_deg, tilt_deg in ((0.0, 0.0), (0.0, 3.0), (350.0, 3.0), (180.0, 3.0)):
+        table = gain_table(pattern, azimuth_deg=azimuth_deg, mechanical_downtilt_deg=tilt_deg)
+        azimuths = np.array([359.999999, 360.0, 0.0, 1e-6, -1e-6, 720.0])
+        actual = looked_up(table, azimuths, np.full(6, -3.0))
+        np.testing.assert_allclose(actual, actual[1], rtol=0, atol=1e-5)
+        around = np.linspace(0.0, 359.0, 57)
+        once = looked_up(table, around, np.full(57, -3.0))
+        np.testing.assert_allclose(
+            once, looked_up(table, around + 360.0, np.full(57, -3.0)), atol=1e-9
+        )
+
+
+def test_turning_needs_no_new_table() -> None:
+    """A table turned by ``replace`` is the table of the turned antenna."""
+    pattern, _ = PATTERNS["TR 36.814"]
+    north = gain_table(pattern, azimuth_deg=0.0, mechanical_downtilt_deg=4.0)
+    east = gain_table(pattern, azimuth_deg=90.0, mechanical_downtilt_deg=4.0)
+    azimuths, elevations = directions(1000)
+    turned = replace(north, azimuth_deg=90.0)
+    np.testing.assert_array_equal(
+        looked_up(east, azimuths, elevations), looked_up(turned, azimuths, elevations)
+    )
+
+
+def test_nan_and_directions_that_do_not_exist() -> None:
+    """NaN, infinity and elevations beyond 90 degrees give NaN; the ends themselves do not."""
+    pattern, _ = PATTERNS["TR 36.814"]
+    for tilt_deg in (0.0, 3.0):
+        table = gain_table(pattern, azimuth_deg=0.0, mechanical_downtilt_deg=tilt_deg)
+        azimuths = np.array([np.nan, 0.0, np.inf, 0.0, 0.0, 0.0])
+        elevations = np.array([0.0, np.nan, 0.0, 90.0001, 90.0, -90.0])
+        actual = looked_up(table, azimuths, elevations)
+        assert np.isnan(actual).tolist() == [True, True, True, True, False, False]
+
+
+def test_table_is_read_only_float32() -> None:
+    """The table holds float32 that cannot be changed, with nodes at both ends of the axes."""
+    arrays = gain_table(PATTERNS["TR 36.814"][0], azimuth_deg=0.0).arrays
+    assert arrays.gain_dbi.dtype == np.float32
+    assert arrays.gain_dbi.shape == (arrays.elevation_deg.size, arrays.azimuth_offset_deg.size)
+    assert (arrays.azimuth_offset_deg[0], arrays.azimuth_offset_deg[-1]) == (0.0, 360.0)
+    assert (arrays.elevation_deg[0], arrays.elevation_deg[-1]) == (-90.0, 90.0)
+    assert (arrays.azimuth_bin_node.size, arrays.elevation_bin_node.size) == (360 * 32, 180 * 32)
+    with pytest.raises(ValueError, match="read-only"):
+        arrays.gain_dbi[0, 0] = 0.0
+
+
+def test_plain_and_compiled_agree() -> None:
+    """The look-up gives the same compiled and as plain Python."""
+    for tilt_deg in (0.0, 6.0):
+        arrays = gain_table(
+            PATTERNS["F.1336 average"][0], azimuth_deg=0.0, mechanical_downtilt_deg=tilt_deg
+        ).arrays
+        for azimuth, elevation in ((0.0, 0.0), (-91.3, -4.4), (359.99, 89.0), (12.0, -75.0)):
+            plain = table_gain_dbi.py_func(arrays, azimuth, elevation)
+            assert float(plain) == pytest.approx(
+                table_gain_dbi(arrays, azimuth, elevation), abs=1e-5
+            )

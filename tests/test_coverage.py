@@ -1,0 +1,468 @@
+"""Sectors over path fields: the layers of a small invented place, and laws that must hold."""
+
+import math
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numba
+import numpy as np
+import pytest
+
+from planner import coverage
+from planner.antenna import Isotropic, Pattern, Tr36814Sector, gain_table, mounted_gain_dbi
+from planner.coverage import Coverage, combine
+from planner.geodesy import LocalFrame
+from planner.network import Radio, Sector, Terminal
+from planner.physics.link import received_signal_dbm
+from planner.sweep import COMPUTED, CROSSES_HOLE, NO_DATA, OUT_OF_RANGE, PathField
+
+ROWS, COLS, CELL_M = 60, 80, 50.0
+TERMINAL = Terminal(antenna_height_m=5.0, antenna_gain_dbi=19.0, feeder_loss_db=0.5)
+PANEL = Tr36814Sector(
+    name="panel", gain_dbi=17.0, azimuth_beamwidth_deg=90.0, elevation_beamwidth_deg=8.0
+)
+WHIP = Isotropic(name="whip", gain_dbi=3.0)
+
+Item = tuple[PathField, Sector, "coverage.GainTable"]
+
+
+def radio(*, threshold_dbm: float = -75.0, power_dbm: float = 19.0) -> Radio:
+    return Radio(
+        id="access",
+        frequency_mhz=5600.0,
+        channel_width_mhz=20.0,
+        transmit_power_dbm=power_dbm,
+        feeder_loss_db=1.0,
+        noise_figure_db=5.0,
+        service_threshold_dbm=threshold_dbm,
+    )
+
+
+def field(
+    *,
+    row: float = 30.2,
+    col: float = 41.7,
+    window: tuple[int, int, int, int] = (0, ROWS, 0, COLS),
+    loss_db: float | np.ndarray | None = None,
+    status: np.ndarray | None = None,
+    seed: int = 1,
+) -> PathField:
+    """A field over a window (row start, row stop, column start, column stop) of the grid."""
+    rows, cols = window[1] - window[0], window[3] - window[2]
+    rng = np.random.default_rng(seed)
+    down, right = np.mgrid[window[0] : window[1], window[2] : window[3]]
+    distance_m = CELL_M * np.hypot(down - row, right - col) + 1.0
+    if loss_db is None:
+        loss_db = 47.4 + 20.0 * np.log10(distance_m) + rng.exponential(6.0, (rows, cols))
+    path_loss = np.broadcast_to(np.float32(loss_db), (rows, cols)).copy()
+    elevation = np.degrees(np.arctan2(-25.0, distance_m)) + rng.normal(0.0, 0.5, (rows, cols))
+    if status is None:
+        status = np.zeros((rows, cols), dtype=np.uint8)
+    path_loss[status != COMPUTED] = np.nan
+    return PathField(
+        row_start=window[0],
+        col_start=window[2],
+        mast_row=row,
+        mast_col=col,
+        mast_ground_m=100.0,
+        frame=LocalFrame(
+            latitude=-46.2,
+            longitude=-121.4,
+            easting_m=500_000.0,
+            northing_m=4_880_000.0,
+            scale=0.9996,
+            scale_gradient_east_per_m=2e-9,
+            scale_gradient_north_per_m=0.0,
+            convergence_deg=1.5,
+        ),
+        cell_m=CELL_M,
+        frequency_mhz=5600.0,
+        antenna_height_m=30.0,
+        receiver_height_m=5.0,
+        radius_m=3000.0,
+        path_loss_db=path_loss,
+        departure_elevation_deg=elevation.astype(np.float32),
+        status=status,
+    )
+
+
+def item(
+    path_field: PathField,
+    *,
+    azimuth_deg: float = 0.0,
+    pattern: Pattern = PANEL,
+    mechanical_downtilt_deg: float = 0.0,
+    own_radio: Radio | None = None,
+) -> Item:
+    sector = Sector(
+        id=f"s{azimuth_deg:g}",
+        antenna=pattern.name,
+        radio=own_radio or radio(),
+        antenna_height_m=30.0,
+        azimuth_deg=azimuth_deg,
+        mechanical_downtilt_deg=mechanical_downtilt_deg,
+    )
+    table = gain_table(
+        pattern, azimuth_deg=azimuth_deg, mechanical_downtilt_deg=mechanical_downtilt_deg
+    )
+    return path_field, sector, table
+
+
+def covered(*items: Item, terminal: Terminal = TERMINAL) -> Coverage:
+    return combine(ROWS, COLS, items, terminal)
+
+
+def three_sectors(threshold_dbm: float = -75.0) -> list[Item]:
+    """Two sectors on one mast, one on another; one window reaches over part of the grid only."""
+    own = radio(threshold_dbm=threshold_dbm)
+    here, there = field(), field(row=10.0, col=15.0, window=(0, 40, 5, 60), seed=2)
+    return [
+        item(here, azimuth_deg=20.0, mechanical_downtilt_deg=2.0, own_radio=own),
+        item(here, azimuth_deg=200.0, own_radio=own),
+        item(there, azimuth_deg=100.0, own_radio=own),
+    ]
+
+
+def assert_same(expected: Coverage, actual: Coverage) -> None:
+    for layer in ("received_signal_dbm", "best_server", "server_margin_db", "status"):
+        one, other = getattr(expected, layer), getattr(actual, layer)
+        assert one.tobytes() == other.tobytes(), layer
+    assert expected.counts == actual.counts
+
+
+def assert_same_server(expected: Coverage, actual: Coverage) -> None:
+    """The same server wherever neither rounding nor the threshold could decide."""
+    decided = ~(expected.server_margin_db < 1e-3)
+    decided &= ~(np.abs(expected.received_signal_dbm + 75.0) < 1e-3)
+    assert decided.mean() > 0.99
+    assert (expected.best_server == actual.best_server)[decided].all()
+
+
+def by_plain_numpy(items: Sequence[Item]) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Signal, server and margin by the exact patterns and whole arrays, for one threshold."""
+    signals = np.full((len(items), ROWS, COLS), -np.inf)
+    for index, (path_field, sector, table) in enumerate(items):
+        rows, cols = path_field.path_loss_db.shape
+        gain_dbi = mounted_gain_dbi(
+            PANEL,
+            true_azimuth_deg=path_field.departure_azimuth_deg(),
+            elevation_deg=path_field.departure_elevation_deg,
+            azimuth_deg=sector.azimuth_deg,
+            mechanical_downtilt_deg=table.mechanical_downtilt_deg,
+            electrical_downtilt_deg=0.0,
+        )
+        signals[
+            index,
+            path_field.row_start : path_field.row_start + rows,
+            path_field.col_start : path_field.col_start + cols,
+        ] = received_signal_dbm(
+            transmit_power_dbm=sector.radio.transmit_power_dbm,
+            feeder_loss_db=sector.radio.feeder_loss_db,
+            antenna_gain_dbi=gain_dbi,
+            path_loss_db=path_field.path_loss_db,
+            terminal_gain_dbi=TERMINAL.antenna_gain_dbi,
+            terminal_feeder_loss_db=TERMINAL.feeder_loss_db,
+        )
+    signals = np.where(np.isnan(signals), -np.inf, signals)
+    ranked = np.sort(signals, axis=0)[::-1]
+    with np.errstate(invalid="ignore"):
+        margin = ranked[0] - ranked[1]
+    return ranked[0], signals.argmax(axis=0) + 1, margin
+
+
+def test_layers_against_plain_numpy() -> None:
+    """The kernel agrees with the exact patterns and whole-array arithmetic."""
+    items = three_sectors()
+    actual = covered(*items)
+    signal, server, margin = by_plain_numpy(items)
+    np.testing.assert_allclose(signal, actual.received_signal_dbm, rtol=0, atol=0.06)
+    served = actual.best_server > 0
+    assert (served == (actual.received_signal_dbm >= -75.0)).all()
+    assert 0.1 < served.mean() < 0.95
+    clear = served & (margin > 0.12)
+    assert clear.sum() > 1000
+    assert (server == actual.best_server)[clear].all()
+    np.testing.assert_allclose(margin, actual.server_margin_db, rtol=0, atol=0.12)
+
+
+def test_one_cell_by_hand() -> None:
+    """19 dBm - 1 dB + 3 dBi - 120 dB + 19 dBi - 0.5 dB are -80.5 dBm."""
+    actual = covered(item(field(loss_db=120.0), pattern=WHIP))
+    assert (actual.received_signal_dbm == np.float32(-80.5)).all()
+    assert (actual.best_server == 0).all()
+    assert np.isnan(actual.server_margin_db).all()
+
+
+def test_azimuth_is_true_not_grid() -> None:
+    """The boresight lies along true north: grid azimuth plus the frame's convergence."""
+    pencil = Tr36814Sector(
+        name="pencil", gain_dbi=30.0, azimuth_beamwidth_deg=1.0, elevation_beamwidth_deg=90.0
+    )
+    mast = field(row=59.0, col=40.0, loss_db=100.0)
+    for grid_azimuth_deg, col in ((0.0, 40), (math.degrees(math.atan2(10.0, 50.0)), 50)):
+        actual = covered(
+            item(mast, azimuth_deg=grid_azimuth_deg + 1.5, pattern=pencil)
+        ).received_signal_dbm[9]
+        assert col == int(np.nanargmax(actual))
+
+
+def test_sectors_count_in_plan_order() -> None:
+    """best_server is 1 where only the first serves, 2 where only the second does."""
+    actual = covered(
+        item(field(window=(0, 20, 0, COLS), loss_db=100.0), pattern=WHIP),
+        item(field(window=(30, 60, 0, COLS), loss_db=100.0), pattern=WHIP),
+    )
+    assert (actual.best_server[:20] == 1).all()
+    assert (actual.best_server[20:30] == -1).all()
+    assert (actual.best_server[30:] == 2).all()
+
+
+def test_margin_needs_two_sectors() -> None:
+    """The margin is there where two windows overlap and NaN elsewhere."""
+    actual = covered(
+        item(field(window=(0, 40, 0, COLS), loss_db=100.0), pattern=WHIP),
+        item(field(window=(20, 60, 0, COLS), loss_db=104.0), pattern=WHIP),
+    )
+    assert np.isnan(actual.server_margin_db[:20]).all()
+    assert (actual.server_margin_db[20:40] == 4.0).all()
+    assert np.isnan(actual.server_margin_db[40:]).all()
+
+
+def test_margin_to_the_strongest_of_the_others() -> None:
+    """With many sectors the margin is to the second strongest, in whatever order they come."""
+    losses = (103.0, 110.0, 101.0, 107.0)
+    for order in ((0, 1, 2, 3), (3, 2, 1, 0), (2, 0, 3, 1)):
+        items = [item(field(loss_db=losses[index]), pattern=WHIP) for index in order]
+        actual = covered(*items)
+        assert (actual.server_margin_db == 2.0).all()
+        assert (actual.best_server == order.index(2) + 1).all()
+
+
+def test_a_sector_above_its_own_threshold_beats_a_stronger_one_below() -> None:
+    """Each sector is held to its own radio's threshold; the margin may then be negative."""
+    weak = item(field(loss_db=100.0), pattern=WHIP, own_radio=radio(threshold_dbm=-70.0))
+    strong = item(field(loss_db=95.0), pattern=WHIP, own_radio=radio(threshold_dbm=-50.0))
+    stronger = item(field(loss_db=93.0), pattern=WHIP, own_radio=radio(threshold_dbm=-50.0))
+    for items in ((weak, strong, stronger), (stronger, strong, weak), (strong, weak, stronger)):
+        actual = covered(*items)
+        assert (actual.best_server == items.index(weak) + 1).all()
+        assert (actual.received_signal_dbm == np.float32(-60.5)).all()
+        assert (actual.server_margin_db == -7.0).all()
+
+
+def test_where_nothing_serves_the_strongest_is_shown() -> None:
+    """Below every threshold best_server is 0 and the signal that of the strongest sector."""
+    high = radio(threshold_dbm=-20.0)
+    items = [
+        item(field(loss_db=loss), pattern=WHIP, own_radio=high) for loss in (100.0, 96.0, 99.0)
+    ]
+    actual = covered(*items)
+    assert (actual.best_server == 0).all()
+    assert (actual.received_signal_dbm == np.float32(-56.5)).all()
+    assert (actual.server_margin_db == 3.0).all()
+    assert actual.counts.served == 0
+
+
+def test_exactly_at_the_threshold_is_served() -> None:
+    """A signal equal to the threshold counts as service."""
+    at = item(field(loss_db=100.0), pattern=WHIP, own_radio=radio(threshold_dbm=-60.5))
+    below = item(field(loss_db=100.0), pattern=WHIP, own_radio=radio(threshold_dbm=-60.4))
+    assert (covered(at).best_server == 1).all()
+    assert (covered(below).best_server == 0).all()
+
+
+def test_first_wins_an_exact_tie() -> None:
+    """Of two sectors with the same signal the first in the plan is the best server."""
+    twin = field(loss_db=100.0)
+    actual = covered(item(twin, pattern=WHIP), item(twin, pattern=WHIP))
+    assert (actual.best_server == 1).all()
+    assert (actual.server_margin_db == 0.0).all()
+
+
+@pytest.mark.parametrize("threshold_dbm", [-75.0, -68.0])
+def test_order_of_sectors_does_not_matter_without_ties(threshold_dbm: float) -> None:
+    """Signal and margin are the same in any order of sectors; the server is the same sector."""
+    items = three_sectors(threshold_dbm)
+    first = covered(*items)
+    for order in ((2, 1, 0), (1, 2, 0)):
+        other = covered(*(items[index] for index in order))
+        np.testing.assert_array_equal(first.received_signal_dbm, other.received_signal_dbm)
+        np.testing.assert_array_equal(first.server_margin_db, other.server_margin_db)
+        back = np.array([0, *(index + 1 for index in order), -1])
+        apart = ~(first.server_margin_db == 0.0)
+        assert apart.mean() > 0.99
+        assert (first.best_server == back[other.best_server])[apart].all()
+
+
+def test_best_signal_is_never_below_any_layer() -> None:
+    """With one threshold no sector alone is stronger anywhere than the best server."""
+    items = three_sectors()
+    best = covered(*items).received_signal_dbm
+    for single in items:
+        alone = covered(single).received_signal_dbm
+        known = ~np.isnan(alone)
+        assert (best[known] >= alone[known]).all()
+
+
+def test_turning_by_360_changes_nothing() -> None:
+    """Azimuths that differ by a whole turn give the same layers."""
+    once = covered(*three_sectors())
+    for turn_deg in (-360.0, 360.0):
+        turned = [
+            (path_field, sector, replace(table, azimuth_deg=table.azimuth_deg + turn_deg))
+            for path_field, sector, table in three_sectors()
+        ]
+        actual = covered(*turned)
+        np.testing.assert_allclose(
+            once.received_signal_dbm, actual.received_signal_dbm, rtol=0, atol=1e-4
+        )
+        assert_same_server(once, actual)
+
+
+def test_three_db_more_power_is_three_db_more_signal() -> None:
+    """3 dB more transmit power raise the signal by 3 dB everywhere and leave the margin alone."""
+    items = three_sectors()
+    louder = [
+        (path_field, replace(sector, radio=radio(power_dbm=22.0)), table)
+        for path_field, sector, table in items
+    ]
+    base, more = covered(*items), covered(*louder)
+    np.testing.assert_allclose(
+        base.received_signal_dbm + 3.0, more.received_signal_dbm, rtol=0, atol=2e-5
+    )
+    np.testing.assert_allclose(base.server_margin_db, more.server_margin_db, rtol=0, atol=2e-5)
+    assert more.counts.served > base.counts.served
+
+
+def test_terminal_counts() -> None:
+    """Gain and feeder loss of the customer's antenna are in the signal."""
+    plain = Terminal(antenna_height_m=5.0, antenna_gain_dbi=0.0)
+    single = item(field(loss_db=100.0), pattern=WHIP)
+    assert (covered(single, terminal=plain).received_signal_dbm == -79.0).all()
+
+
+def test_a_sector_without_a_path_does_not_take_part() -> None:
+    """NaN in one mast's path leaves the cell to the other sectors."""
+    status = np.zeros((ROWS, COLS), dtype=np.uint8)
+    status[10:20, 10:20] = CROSSES_HOLE
+    blocked = item(field(loss_db=90.0, status=status), pattern=WHIP)
+    actual = covered(blocked, item(field(loss_db=100.0), pattern=WHIP))
+    hidden = np.zeros((ROWS, COLS), dtype=bool)
+    hidden[10:20, 10:20] = True
+    assert (actual.best_server[hidden] == 2).all()
+    assert np.isnan(actual.server_margin_db[hidden]).all()
+    assert (actual.best_server[~hidden] == 1).all()
+    assert (actual.server_margin_db[~hidden] == 10.0).all()
+    assert (actual.status == COMPUTED).all()
+
+
+def test_counts_tell_the_reasons_apart() -> None:
+    """Every cell is counted once: out of range, a hole, behind a hole, or computed."""
+    window = (0, 40, 0, COLS)
+    status = np.zeros((40, COLS), dtype=np.uint8)
+    status[0:4] = OUT_OF_RANGE
+    status[4:7] = NO_DATA
+    status[7:9] = CROSSES_HOLE
+    one = item(field(window=window, status=status, loss_db=100.0), pattern=WHIP)
+    alone = covered(one)
+    assert (alone.status[:4] == OUT_OF_RANGE).all()
+    assert (alone.status[4:7] == NO_DATA).all()
+    assert (alone.status[7:9] == CROSSES_HOLE).all()
+    assert (alone.status[9:40] == COMPUTED).all()
+    assert (alone.status[40:] == OUT_OF_RANGE).all()
+    assert (alone.best_server[:9] == -1).all()
+    assert np.isnan(alone.received_signal_dbm[:9]).all()
+    assert alone.counts == coverage.CellCounts(
+        cells=ROWS * COLS,
+        out_of_range=24 * COLS,
+        in_range=36 * COLS,
+        computed=31 * COLS,
+        no_data=3 * COLS,
+        crosses_hole=2 * COLS,
+        served=31 * COLS,
+        served_by_sector=(31 * COLS,),
+    )
+    # A second mast reaches the first rows, but the hole stays a hole.
+    status = np.zeros((8, COLS), dtype=np.uint8)
+    status[4:7] = NO_DATA
+    status[7:8] = OUT_OF_RANGE
+    two = item(field(window=(0, 8, 0, COLS), status=status, loss_db=90.0), pattern=WHIP)
+    for items in ((one, two), (two, one)):
+        both = covered(*items)
+        assert (both.status[:4] == COMPUTED).all()
+        assert (both.status[4:7] == NO_DATA).all()
+        assert (both.status[7:9] == CROSSES_HOLE).all()
+        assert both.counts.out_of_range == 20 * COLS
+        assert both.counts.served_by_sector == tuple(
+            4 * COLS if single is two else 31 * COLS for single in items
+        )
+
+
+def test_no_sectors_cover_nothing() -> None:
+    """Without sectors every cell is out of range."""
+    actual = covered()
+    assert (actual.best_server == -1).all()
+    assert np.isnan(actual.received_signal_dbm).all()
+    assert actual.counts.out_of_range == ROWS * COLS
+    assert actual.counts.served_by_sector == ()
+
+
+def test_types_shapes_and_read_only() -> None:
+    """The layers have the grid's shape and the agreed types, and cannot be changed."""
+    actual = covered(*three_sectors())
+    for layer, dtype in (
+        ("received_signal_dbm", np.float32),
+        ("best_server", np.int16),
+        ("server_margin_db", np.float32),
+        ("status", np.uint8),
+    ):
+        array = getattr(actual, layer)
+        assert array.shape == (ROWS, COLS)
+        assert array.dtype == dtype
+        with pytest.raises(ValueError, match="read-only"):
+            array[0, 0] = 0
+
+
+@pytest.mark.parametrize("window", [(-1, 20, 0, COLS), (0, 20, 5, COLS + 1), (50, ROWS + 1, 0, 9)])
+def test_a_window_outside_the_grid_is_refused(window: tuple[int, int, int, int]) -> None:
+    """Kernels do not check their indices; a window that does not fit never reaches them."""
+    with pytest.raises(ValueError, match="does not fit a grid of 60 by 80 cells"):
+        covered(item(field(window=window)))
+
+
+def test_path_field_is_left_alone() -> None:
+    """Combining changes nothing in the path field: it can be used again."""
+    items = three_sectors()
+    before = [path_field.path_loss_db.tobytes() for path_field, _, _ in items]
+    assert_same(covered(*items), covered(*items))
+    assert before == [path_field.path_loss_db.tobytes() for path_field, _, _ in items]
+
+
+def test_one_thread_and_two_give_the_same_bytes() -> None:
+    """The result does not depend on the number of threads."""
+    threads = numba.get_num_threads()
+    if numba.config.NUMBA_NUM_THREADS < 2:
+        pytest.skip("only one thread available")
+    try:
+        numba.set_num_threads(1)
+        one = covered(*three_sectors())
+        numba.set_num_threads(2)
+        two = covered(*three_sectors())
+    finally:
+        numba.set_num_threads(threads)
+    assert_same(one, two)
+
+
+def test_plain_and_compiled_agree(monkeypatch: pytest.MonkeyPatch) -> None:
+    """The kernels run as plain Python give the same layers."""
+    compiled = covered(*three_sectors())
+    for name in ("_add_mast", "_add_sector", "_write_margins", "_status_of_two"):
+        monkeypatch.setattr(coverage, name, getattr(coverage, name).py_func)
+    monkeypatch.setattr(coverage, "prange", range)
+    plain = covered(*three_sectors())
+    np.testing.assert_allclose(
+        compiled.received_signal_dbm, plain.received_signal_dbm, rtol=0, atol=1e-4
+    )
+    np.testing.assert_allclose(compiled.server_margin_db, plain.server_margin_db, rtol=0, atol=1e-4)
+    assert compiled.status.tobytes() == plain.status.tobytes()
+    assert_same_server(compiled, plain)
