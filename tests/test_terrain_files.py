@@ -239,22 +239,37 @@ def test_agrees_with_gdals_warp(tmp_path):
 
 def test_grid_on_the_rasters_own_lattice_keeps_its_heights(tmp_path):
     """Two rasters of which one must be resampled: cells of the other come through unchanged."""
-    heights = _noise(300, 300)
-    near = written(tmp_path / "utm.tif", heights, UTM_TRANSFORM, UTM33)
-    x, y = _place(UTM33, *MIDDLE)
-    other = written(tmp_path / "big.tif", _noise(50, 50), Affine(500, 0, x, 0, -500, y), UTM33)
-    terrain = read_terrain(TerrainSource(rasters=(near, other)), [(46.99, 13.68)], 9000.0)
+    heights = _noise(200, 200)
+    near = written(tmp_path / "near.tif", heights, Affine(30, 0, 402_007, 0, -30, 5_203_011), UTM33)
+    far = written(
+        tmp_path / "far.tif", _noise(50, 50), Affine(500, 0, 408_007, 0, -500, 5_203_011), UTM33
+    )
+    terrain = read_terrain(TerrainSource(rasters=(near, far)), [MIDDLE], 9000.0)
     grid = terrain.grid
-    top = round((UTM_TRANSFORM.f - grid.transform.f) / 30)
-    left = round((UTM_TRANSFORM.c - grid.transform.c) / 30)
-    assert top <= 0
-    assert left >= 0
-    actual = terrain.ground_elevation_m[-top if top < 0 else 0 :, left : left + 300]
-    np.testing.assert_array_equal(heights[-top - top :][: actual.shape[0]], actual[: 300 + 2 * top])
+    row, col = grid.row_col(402_007 + 15, 5_203_011 - 15)
+    assert (float(row), float(col)) == (0.0, 0.0)
+    assert grid.cols > 210
+    np.testing.assert_array_equal(heights, terrain.ground_elevation_m[:200, :200])
 
 
-def test_tiles_of_two_zones_are_joined(tmp_path):
-    """The later raster fills what the earlier leaves empty, in its own CRS."""
+def test_earlier_rasters_count_first_and_later_ones_fill(tmp_path):
+    """Where tiles of one lattice overlap, the later one shows only in the holes of the earlier."""
+    first = np.full((200, 200), 500, dtype=np.float32)
+    first[80:100, 80:100] = np.nan
+    second = np.full((200, 200), 700, dtype=np.float32)
+    paths = (
+        written(tmp_path / "1.tif", first, Affine(30, 0, 402_000, 0, -30, 5_203_000), UTM33),
+        written(tmp_path / "2.tif", second, Affine(30, 0, 403_500, 0, -30, 5_203_000), UTM33),
+    )
+    terrain = read_terrain(TerrainSource(rasters=paths), [(46.96, 13.76)], 20_000.0)
+    expected = np.full((200, 250), 700, dtype=np.float32)
+    expected[:, :200] = np.where(np.isnan(first), 700, first)
+    np.testing.assert_array_equal(expected, terrain.ground_elevation_m)
+
+
+@pytest.mark.parametrize("asked", [{}, {"cell_m": 37.0}])
+def test_tiles_of_two_zones_are_joined(tmp_path, asked):
+    """The later raster fills what the earlier leaves empty, in its own CRS, without a step."""
     plane = Plane("EPSG:4326", 12.0, 47.0, 3000.0, -2000.0, 1000.0)
     paths = []
     for zone, sign in ((33, 1), (32, -1)):
@@ -268,7 +283,7 @@ def test_tiles_of_two_zones_are_joined(tmp_path):
         )
         heights = plane(longitude, latitude).astype(np.float32)
         paths.append(written(tmp_path / f"{zone}.tif", heights, transform, crs))
-    terrain = read_terrain(TerrainSource(rasters=tuple(paths)), [(47.0, 12.0)], 4000.0)
+    terrain = read_terrain(TerrainSource(rasters=tuple(paths)), [(47.0, 12.0)], 4000.0, **asked)
     expected = plane.on(terrain.grid)
     # Linear in degrees is not quite linear in metres: 30 m cells leave a millimetre.
     np.testing.assert_allclose(terrain.ground_elevation_m, expected, atol=0.05)

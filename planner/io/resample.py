@@ -4,7 +4,8 @@
   customers do, exact to 0.005 of a cell of the lattice.
 - Heights are bilinear between the four centres around. Holes take no part, the others' weights are
   scaled up; where less than half of the weight remains, the cell is a hole. So a hole keeps its
-  size: it neither spreads by a cell nor closes, and its rim is not pulled towards a code.
+  size: it neither spreads by a cell nor closes, and its rim is not pulled towards a code. Where
+  several lattices meet, one that has all four corners goes before one that has not.
 - Where the grid's cells are at least twice as large as the lattice's, whole blocks of cells are
   averaged first, since picking single cells would make noise of fine relief.
 - Longitudes are counted from the middle of the area, so the 180th meridian is no edge.
@@ -39,20 +40,24 @@ def heights_on_grid(
     Earlier mosaics count first; later ones fill what they leave empty.
     """
     heights = np.full((grid.rows, grid.cols), np.nan, dtype=np.float32)
-    for number, mosaic in enumerate(sources):
+    # Along the edge of a lattice, and around its holes, another lattice may have all four corners:
+    # so each gives first what it knows fully, then what it can stretch to.
+    passes = [(mosaic, False) for mosaic in sources] if len(sources) > 1 else []
+    passes += [(mosaic, True) for mosaic in sources]
+    for number, (mosaic, stretched) in enumerate(passes):
         blocks = averaged_block(mosaic, grid)
         done = 0
         todo = [(0, 0, grid.rows, grid.cols)]
         while todo:
             top, left, rows, cols = todo.pop()
             part = heights[top : top + rows, left : left + cols]
-            smaller = _fill_part(mosaic, grid, blocks, part, top, left, tally)
+            smaller = _fill_part(mosaic, grid, blocks, part, top, left, stretched, tally)
             if smaller:
                 todo.extend(smaller)
                 continue
             done += rows * cols
             if progress is not None:
-                progress((number + done / heights.size) / len(sources))
+                progress((number + done / heights.size) / len(passes))
     return heights
 
 
@@ -84,6 +89,7 @@ def _fill_part(
     heights: NDArray[np.float32],
     top: int,
     left: int,
+    stretched: bool,
     tally: Tally,
 ) -> list[tuple[int, int, int, int]]:
     """Fill the empty cells of a part of the grid, or return the smaller parts to cut it into."""
@@ -122,6 +128,7 @@ def _fill_part(
         (row_nodes + 0.5 - low_row) / block_rows - 0.5,
         (col_nodes + 0.5 - low_col) / block_cols - 0.5,
         step,
+        stretched,
         heights,
     )
     return []
@@ -189,6 +196,7 @@ def _take_bilinear(
     row_nodes: NDArray[np.float64],
     col_nodes: NDArray[np.float64],
     step: int,
+    stretched: bool,
     heights: NDArray[np.float32],
 ) -> None:
     """Fill the empty cells of ``heights``; nodes say where every step-th cell lies on
@@ -219,15 +227,17 @@ def _take_bilinear(
                 + lower_left * col_nodes[next_row, node_col]
                 + lower_right * col_nodes[next_row, next_col]
             )
-            heights[i, j] = _bilinear_around_holes(source, row, col)
+            heights[i, j] = _bilinear_around_holes(source, row, col, stretched)
 
 
 @scalar
-def _bilinear_around_holes(source: NDArray[np.float32], row: float, col: float) -> float:
-    """Bilinear value from the corners that are no holes; NaN if they have less than half the
-    weight.
+def _bilinear_around_holes(
+    source: NDArray[np.float32], row: float, col: float, stretched: bool
+) -> float:
+    """Bilinear value; ``stretched``: from the corners that are there, if they have half the weight.
 
-    Beyond the outermost centres, up to the edge of the cells, the edge's values continue.
+    Stretched, the edge's values continue beyond the outermost centres up to the edge of the cells.
+    NaN where that does not suffice.
     """
     rows, cols = source.shape
     # Positions that are whole but for rounding are whole: a grid on the lattice keeps its heights.
@@ -235,7 +245,8 @@ def _bilinear_around_holes(source: NDArray[np.float32], row: float, col: float) 
         row = np.rint(row)
     if abs(col - np.rint(col)) < 1e-6:
         col = np.rint(col)
-    if not (-_EDGE <= row <= rows - 1.0 + _EDGE and -_EDGE <= col <= cols - 1.0 + _EDGE):
+    reach = _EDGE if stretched else 0.0
+    if not (-reach <= row <= rows - 1.0 + reach and -reach <= col <= cols - 1.0 + reach):
         return np.nan
     top = int(np.floor(row))
     left = int(np.floor(col))
@@ -248,4 +259,5 @@ def _bilinear_around_holes(source: NDArray[np.float32], row: float, col: float) 
             if weight > 0.0 and not np.isnan(value):
                 total += weight * value
                 weights += weight
-    return total / weights if weights >= 0.5 - 1e-9 else np.nan
+    least = 0.5 if stretched else 1.0
+    return total / weights if weights >= least - 1e-9 else np.nan
