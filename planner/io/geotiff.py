@@ -99,7 +99,7 @@ def write_layer(
                     factors = _overview_factors(grid.rows, grid.cols)
                     if factors:
                         layer.build_overviews(factors, Resampling.nearest)
-                _check_whole(temporary, array, factors)
+                _check_whole(temporary, array, factors, path)
         except RasterioError as error:
             reason = error.__cause__ or error
             raise OutputError(f"{path}: could not be written: {reason}") from error
@@ -123,13 +123,13 @@ def _overview_factors(rows: int, cols: int) -> list[int]:
     return factors
 
 
-def _check_whole(path: Path, array: NDArray[np.generic], factors: list[int]) -> None:
+def _check_whole(path: Path, array: NDArray[np.generic], factors: list[int], target: Path) -> None:
     """GDAL may keep silent about a full disk until the file is read: read its last row of tiles."""
     with rasterio.open(path) as layer:
         last_row = layer.read(1, window=((array.shape[0] - 1, array.shape[0]), (0, array.shape[1])))
         whole = np.array_equal(last_row[0], array[-1], equal_nan=np.issubdtype(array.dtype, float))
         if not whole or layer.overviews(1) != factors:
-            raise OutputError(f"{path.parent}: a layer came out incomplete; is the disk full?")
+            raise OutputError(f"{target}: could not be written whole; is the disk full?")
 
 
 def _plain(text: str) -> str:
