@@ -1,5 +1,7 @@
 """Terrain from files: which grid a plan gets, and that the heights on it are the rasters' own."""
 
+import tracemalloc
+
 import matplotlib.cbook
 import numpy as np
 import pytest
@@ -8,6 +10,7 @@ from affine import Affine
 from pyproj import Transformer
 from rasterio.enums import Resampling
 from rasterio.vrt import WarpedVRT
+from rasterio.windows import Window
 
 from planner.io import resample
 from planner.io.terrain_files import TerrainSource, describe_terrain, plan_grid, read_terrain
@@ -82,6 +85,40 @@ def test_metric_tiles_that_fit_together_are_used_unresampled(tmp_path):
     assert plan_grid(source, [(46.98, 13.70)], 4000.0)[1]
     assert left < 200 < left + grid.cols
     np.testing.assert_array_equal(window, terrain.ground_elevation_m)
+
+
+def test_only_the_window_needed_is_read(tmp_path):
+    """A raster of 7 GB (sparse, so that the file is small) gives its window at once."""
+    side = 60_000
+    path = tmp_path / "country.tif"
+    with rasterio.open(
+        path,
+        "w",
+        driver="GTiff",
+        width=side,
+        height=side,
+        count=1,
+        dtype="int16",
+        crs=UTM33,
+        transform=Affine(2, 0, 400_000, 0, -2, 5_200_000),
+        tiled=True,
+        blockxsize=512,
+        blockysize=512,
+        sparse_ok=True,
+    ) as dataset:
+        window = Window(50_000, 40_000, 100, 100)
+        dataset.write(np.full((100, 100), 700, dtype=np.int16), 1, window=window)
+    place = Transformer.from_crs(UTM33, 4326, always_xy=True).transform(500_100, 5_119_900)
+    source = TerrainSource(rasters=(path,))
+    for cell_m in (None, 5.0):
+        read_terrain(source, [place[::-1]], 500.0, cell_m=cell_m)  # compiled once, unmeasured
+        tracemalloc.start()
+        terrain = read_terrain(source, [place[::-1]], 500.0, cell_m=cell_m)
+        _, most_bytes = tracemalloc.get_traced_memory()
+        tracemalloc.stop()
+        row, col = terrain.grid.row_col(500_100.0, 5_119_900.0)
+        assert float(terrain.ground_at(row, col)) == 700.0
+        assert most_bytes < 50_000_000
 
 
 @pytest.mark.parametrize(

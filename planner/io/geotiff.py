@@ -92,7 +92,7 @@ def write_layer(
             with rasterio.Env(GDAL_PAM_ENABLED="NO", GDAL_TIFF_OVR_BLOCKSIZE=str(TILE_CELLS)):
                 # Tags first: set after the data they would be written twice.
                 with rasterio.open(temporary, "w", **profile) as layer:
-                    layer.update_tags(**dict(sorted(every_tag.items())))
+                    layer.update_tags(**every_tag)
                     layer.set_band_description(1, description)
                     layer.set_band_unit(1, unit)
                     layer.write(array, 1)

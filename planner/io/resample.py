@@ -24,6 +24,7 @@ from planner.physics._jit import scalar
 from planner.terrain import Grid
 
 PART_CELLS = 32_000_000  # cells of the lattice that are in memory at a time
+_PART_SIDE = 2048  # cells of the grid along the side of a part, at most
 _POSITION_ERROR = 0.005  # cells of the lattice by which an interpolated position may be off
 _LARGEST_BLOCK = 64  # cells of the lattice averaged along one side
 _EDGE = 0.5 + 1e-9  # from the outermost centres to the edge, in cells
@@ -47,7 +48,11 @@ def heights_on_grid(
     for number, (mosaic, stretched) in enumerate(passes):
         blocks = averaged_block(mosaic, grid)
         done = 0
-        todo = [(0, 0, grid.rows, grid.cols)]
+        todo = [
+            (top, left, min(_PART_SIDE, grid.rows - top), min(_PART_SIDE, grid.cols - left))
+            for top in range(0, grid.rows, _PART_SIDE)
+            for left in range(0, grid.cols, _PART_SIDE)
+        ]
         while todo:
             top, left, rows, cols = todo.pop()
             part = heights[top : top + rows, left : left + cols]
