@@ -68,6 +68,13 @@ def test_no_raster_at_all():
     assert expected == _refused(TerrainSource(rasters=()))
 
 
+def test_no_tower_at_all(tmp_path):
+    """Without a place there is no area to read."""
+    source = TerrainSource(rasters=(_flat(tmp_path / "utm.tif"),))
+    expected = ["towers: found none with a sector that is on; allowed: one or more"]
+    assert expected == _refused(source, ())
+
+
 def test_truncated_file_is_named(tmp_path):
     """A file that opens but breaks off is told when its heights are read."""
     heights = np.random.default_rng(1).normal(size=(200, 200)).astype(np.float32)

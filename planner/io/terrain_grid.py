@@ -55,6 +55,10 @@ def terrain_layout(
     Raises TerrainError where a centre lies off the rasters, where the named CRS cannot serve as a
     grid and where the grid would have more than ``LARGEST_GRID_CELLS``.
     """
+    if not centres:
+        raise TerrainError(
+            Problem(where="towers", found="none with a sector that is on", allowed="one or more")
+        )
     middle = central_point(centres)
     joined = mosaics(ground, *middle)
     _refuse_centres_off_rasters(joined, centres, names)
