@@ -56,7 +56,7 @@ def _built(
     gain_dbi = float(keys["gain_dbi"])
     try:
         if "formula" in keys:
-            others = {
+            others: dict[str, Any] = {
                 key: float(value) if isinstance(value, int) else value
                 for key, value in keys.items()
                 if key not in ("formula", "gain_dbi")
