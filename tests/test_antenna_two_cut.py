@@ -64,6 +64,26 @@ def test_no_seam_behind() -> None:
     assert near[0] == pytest.approx(near[1], abs=1e-6)
 
 
+def test_no_seam_where_the_file_has_no_point_behind() -> None:
+    """Between the last point before 180 degrees and the first after it the line is straight."""
+    angles = np.arange(-170.0, 180.0, 20.0)
+    levels = np.where(np.abs(angles) < 15.0, 0.0, -20.0)
+    levels[0], levels[-1] = -30.0, -26.0
+    pattern = lopsided(horizontal_angle_deg=angles, horizontal_level_db=levels)
+    for azimuth, expected in ((170.0, -26.0), (175.0, -27.0), (180.0, -28.0), (-175.0, -29.0)):
+        assert float(pattern.gain(azimuth, -2.0)) == pytest.approx(15.0 + expected)
+        assert float(pattern.gain(azimuth + 360.0, -2.0)) == pytest.approx(15.0 + expected)
+
+
+def test_edges_of_a_beam_off_the_boresight() -> None:
+    """The half-power edges lie about the peak, wherever it points."""
+    angles = np.arange(-180.0, 180.0, 10.0)
+    levels = -0.1 * np.abs(angles - 40.0)
+    pattern = lopsided(horizontal_angle_deg=angles, horizontal_level_db=levels)
+    assert half_power_edges_deg(pattern) == pytest.approx((10.0, 70.0), abs=1e-6)
+    assert pattern.azimuth_beamwidth_deg == pytest.approx(60.0)
+
+
 def test_order_and_way_of_counting_do_not_matter() -> None:
     """0 to 360 in any order, with 360 repeating 0, is the same antenna as -180 to 180."""
     angles = np.array([*HORIZONTAL.keys(), 180])

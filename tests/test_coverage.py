@@ -115,7 +115,7 @@ def covered(*items: Item, terminal: Terminal = TERMINAL) -> Coverage:
 def three_sectors(threshold_dbm: float = -75.0) -> list[Item]:
     """Two sectors on one mast, one on another; one window reaches over part of the grid only."""
     own = radio(threshold_dbm=threshold_dbm)
-    here, there = field(), field(row=10.0, col=15.0, window=(0, 40, 5, 60), seed=2)
+    here, there = field(), field(row=10.0, col=15.0, window=(3, 43, 5, 60), seed=2)
     return [
         item(here, azimuth_deg=20.0, mechanical_downtilt_deg=2.0, own_radio=own),
         item(here, azimuth_deg=200.0, own_radio=own),
@@ -382,11 +382,13 @@ def test_counts_tell_the_reasons_apart() -> None:
         served=31 * COLS,
         served_by_sector=(31 * COLS,),
     )
-    # A second mast reaches the first rows, but the hole stays a hole.
-    status = np.zeros((8, COLS), dtype=np.uint8)
+    # A second mast reaches the first rows, but the hole stays a hole. Where one calls a cell a
+    # hole and the other knows only that its path crosses one, the cell itself has data.
+    status = np.zeros((9, COLS), dtype=np.uint8)
     status[4:7] = NO_DATA
-    status[7:8] = OUT_OF_RANGE
-    two = item(field(window=(0, 8, 0, COLS), status=status, loss_db=90.0), pattern=WHIP)
+    status[7] = OUT_OF_RANGE
+    status[8] = NO_DATA
+    two = item(field(window=(0, 9, 0, COLS), status=status, loss_db=90.0), pattern=WHIP)
     for items in ((one, two), (two, one)):
         both = covered(*items)
         assert (both.status[:4] == COMPUTED).all()
