@@ -12,6 +12,7 @@ from planner.plan.shown import printable, shown_key
 LARGEST_FILE_BYTES = 5_000_000
 # Dots make nested keys, and the parser's work grows with their square; a plan needs few.
 MOST_DOT_STEPS = 10_000_000
+MOST_ELEMENTS = 10_000  # of one table or list
 
 Location = tuple[str | int, ...]  # keys and places in lists: ("tower", 0, "latitude")
 
@@ -84,6 +85,11 @@ def read_toml_file(path: Path) -> TomlFile:
         ) from None
     except ValueError:  # not the TOML is wrong but Python's limit for digits is reached
         raise _plan_error(path, "a number of thousands of digits") from None
+    longest = _longest_collection(table)
+    if longest > MOST_ELEMENTS:
+        raise _plan_error(
+            path, f"a table or list of {longest:,} elements", f"up to {MOST_ELEMENTS:,}"
+        )
     return TomlFile(
         path=path.absolute(),
         sha256=hashlib.sha256(data).hexdigest(),
@@ -139,6 +145,18 @@ def _dot_steps(text: str) -> int:
     """About how many steps the parser needs for nested keys."""
     dots = [line.count(".") for line in text.split("\n")]
     return max(dots) * len(dots) + sum(count * count for count in dots)
+
+
+def _longest_collection(table: dict[str, Any]) -> int:
+    """Number of elements of the longest table or list, at any depth."""
+    longest = 0
+    waiting: list[Any] = [table]
+    while waiting:
+        collection = waiting.pop()
+        longest = max(longest, len(collection))
+        inner = collection.values() if isinstance(collection, dict) else collection
+        waiting.extend(value for value in inner if isinstance(value, dict | list))
+    return longest
 
 
 def _parser_words(text: str, error: tomllib.TOMLDecodeError) -> str:
