@@ -28,6 +28,7 @@ COLOURS = {0: (200, 200, 200, 255), 1: (0, 114, 178, 255), 2: (230, 159, 0, 128)
 def _signal():
     signal = np.random.default_rng(1).normal(-80, 10, (700, 600)).astype(np.float32)
     signal[:50, :70] = np.nan
+    signal[-1, :300] = np.nan  # the last row is read back after writing
     return signal
 
 
