@@ -7,6 +7,7 @@ since holes in the terrain are NaN and must stay so.
 from collections.abc import Callable
 from typing import Any
 
+import numpy as np
 from numba import njit
 from numba import vectorize as numba_vectorize
 
@@ -24,6 +25,7 @@ def over_arrays(scalar_function: Any) -> Callable[..., Any]:
         nonlocal compiled
         if compiled is None:  # compiled at the first call, not at import
             compiled = numba_vectorize([signature], cache=True)(scalar_function.py_func)
-        return compiled(*values)
+        with np.errstate(invalid="ignore"):  # a comparison with NaN is answered, not warned about
+            return compiled(*values)
 
     return call
