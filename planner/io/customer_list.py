@@ -24,7 +24,7 @@ from planner.io.customer_columns import (
 from planner.io.customer_row import ReadRow, read_row, shown
 from planner.network import Customer
 
-LARGEST_FILE_BYTES = 32 * 1024 * 1024
+LARGEST_FILE_BYTES = 16 * 1024 * 1024
 LARGEST_ROWS = 100_000
 LARGEST_COLUMNS = 100
 _MOST_PROBLEMS = 20  # of one kind in one message
