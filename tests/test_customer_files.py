@@ -2,6 +2,7 @@
 
 import csv
 import math
+import re
 import sqlite3
 from dataclasses import replace
 from datetime import date
@@ -14,7 +15,7 @@ import pytest
 from planner.customers import CustomerAnswer
 from planner.errors import CustomersError, OutputError
 from planner.io import customer_list
-from planner.io.customer_columns import plain_text, spreadsheet_text
+from planner.io.customer_columns import COLUMNS, plain_text, spreadsheet_text
 from planner.io.customer_files import (
     read_customer_list,
     read_customers,
@@ -520,3 +521,25 @@ def test_a_target_that_cannot_be_written_is_an_output_error(tmp_path):
     with pytest.raises(OutputError, match="could not be written"):
         write_customers_gpkg(target.with_suffix(".gpkg"), answers, DAY)
     assert pyogrio.get_gdal_config_option("OGR_CURRENT_DATE") is None
+
+
+def test_the_page_names_every_column_of_the_table_in_order():
+    """docs/customers.md and the code agree, bounds included."""
+    page = (Path(__file__).parents[1] / "docs" / "customers.md").read_text(encoding="utf-8")
+    table = page.split("## The table")[1].split("### The table as a list")[0]
+    named = re.findall(r"^\| `([a-z_]+)` \|", table, flags=re.MULTILINE)
+    assert named == [column.name for column in COLUMNS]
+    assert f"{customer_list.LARGEST_FILE_BYTES // 1024**2} MB" in page
+    assert f"{customer_list.LARGEST_ROWS:,} customers" in page
+    assert f"{customer_list.LARGEST_COLUMNS} columns" in page
+
+
+def test_the_list_on_the_page_can_be_read(tmp_path):
+    """The example of docs/customers.md."""
+    page = (Path(__file__).parents[1] / "docs" / "customers.md").read_text(encoding="utf-8")
+    path = listed(tmp_path, page.split("```csv\n")[1].split("```")[0])
+    customers = read_customers(path)
+    assert [(c.id, c.antenna_height_m, c.trouble) for c in customers] == [
+        ("17", 7.5, ""),
+        ("18", None, ""),
+    ]

@@ -147,6 +147,10 @@ def test_signal_exactly_at_the_threshold_serves():
     exact = replace(RADIO, service_threshold_dbm=answer.received_signal_dbm)
     (again,) = checked(terrain, [replace(mast, sectors=(sector("a", radio=exact),))], [house])
     assert (again.verdict, again.fade_margin_db) == ("served", 0.0)
+    strong = sector("b", radio=replace(RADIO, transmit_power_dbm=29.0, service_threshold_dbm=0.0))
+    both = replace(mast, sectors=(strong, sector("a", radio=exact)))
+    (among,) = checked(terrain, [both], [house])
+    assert (among.verdict, among.sector_id) == ("served", "a")
 
 
 def test_sectors_with_one_height_and_frequency_share_a_path(monkeypatch):
