@@ -109,7 +109,7 @@ def test_the_antenna_is_aimed_by_true_bearing_and_its_gain_counts():
     (answer,) = checked(terrain, [replace(mast, sectors=(deaf,))], [house], {"away": panel})
     assert answer.verdict == "not served"
     assert answer.reason == (
-        f"{-answer.fade_margin_db:.1f} dB below the threshold of -50 dBm; in sight; "
+        f"{-answer.fade_margin_db:.1f} dB below the threshold of -50 dBm; in sight 1.00 km away; "
         "the sector's gain here is 25.0 dB below its peak"
     )
 
@@ -189,6 +189,23 @@ def test_a_wall_is_named_with_its_place():
     assert answer.reason == (
         f"{-answer.fade_margin_db:.1f} dB below the threshold of -75 dBm; blocked 1.50 km away, "
         f"66.3 m above the direct ray (diffraction {answer.diffraction_loss_db:.1f} dB)"
+    )
+
+
+def test_a_ray_that_passes_close_above_a_wall_is_in_sight_and_loses():
+    """A metre below the ray: the reason tells of the Fresnel zone and what it costs."""
+    ground = np.zeros((81, 81), dtype=np.float32)
+    ground[:, 40] = 16.4
+    terrain = plain(ground=ground)
+    weak = sector("a", radio=replace(RADIO, service_threshold_dbm=-60.0))
+    mast = tower(terrain, 40.0, 20.0, "mast", weak)
+    (answer,) = checked(terrain, [mast], [customer(terrain, 40.0, 60.0)])
+    assert answer.line_of_sight is True
+    assert answer.diffraction_loss_db > 3.0
+    assert math.isnan(answer.blocking_excess_m)
+    assert answer.reason == (
+        f"{-answer.fade_margin_db:.1f} dB below the threshold of -60 dBm; in sight 2.00 km away, "
+        f"but the Fresnel zone is obstructed (diffraction {answer.diffraction_loss_db:.1f} dB)"
     )
 
 

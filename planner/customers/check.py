@@ -230,6 +230,7 @@ def _computed(
         reason = not_served_reason(
             fade_margin_db=signal_dbm - threshold_dbm,
             threshold_dbm=threshold_dbm,
+            distance_m=link.distance_m,
             line_of_sight=link.line_of_sight,
             blocking_distance_m=link.blocking_distance_m,
             blocking_excess_m=link.blocking_excess_m,

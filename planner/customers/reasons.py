@@ -73,6 +73,7 @@ def not_served_reason(
     *,
     fade_margin_db: float,
     threshold_dbm: float,
+    distance_m: float,
     line_of_sight: bool,
     blocking_distance_m: float,
     blocking_excess_m: float,
@@ -87,9 +88,12 @@ def not_served_reason(
             f"the direct ray (diffraction {diffraction_loss_db:.1f} dB)"
         )
     elif diffraction_loss_db >= _WORTH_NAMING_DB:
-        parts.append(f"in sight, but ground close to the ray costs {diffraction_loss_db:.1f} dB")
+        parts.append(
+            f"in sight {length_text(distance_m)} away, but the Fresnel zone is obstructed "
+            f"(diffraction {diffraction_loss_db:.1f} dB)"
+        )
     else:
-        parts.append("in sight")
+        parts.append(f"in sight {length_text(distance_m)} away")
     if gain_below_peak_db >= _WORTH_NAMING_DB:
         parts.append(f"the sector's gain here is {gain_below_peak_db:.1f} dB below its peak")
     return "; ".join(parts)
