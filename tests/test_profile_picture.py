@@ -88,7 +88,10 @@ def real_paths() -> dict[str, Path]:
 
 def test_no_text_covers_another_or_leaves_the_picture():
     """All texts with their drawn extents, short and very long names, strong and weak signals."""
-    names = [("west", "east"), ("a very long name of a tower " * 9, "住所 with $\\frac$ and <b> " * 9)]
+    names = [
+        ("west", "east"),
+        ("a very long name of a tower " * 9, "住所 with $\\frac$ and <b> " * 9),
+    ]
     checked = 0
     for (name, path), (a_name, b_name) in itertools.product(real_paths().items(), names):
         figure = figure_of(path, a_name, b_name, signal=-171.23, threshold=-75.25)
