@@ -9,7 +9,7 @@ from collections.abc import Iterator
 import numpy as np
 from numpy.typing import NDArray
 from scipy import ndimage
-from scipy.sparse import coo_array, csgraph
+from scipy.sparse import coo_array, csgraph, csr_array
 
 Floats = NDArray[np.float64]
 Indices = NDArray[np.int64]
@@ -106,6 +106,12 @@ def ends_and_depths(receivers: Indices) -> tuple[Indices, Indices]:
         end = further
 
 
+def sparse_graph(weight: Floats, start: Indices, end: Indices, nodes: int) -> csr_array:
+    """Graph as scipy's routines take it; older ones take no indices of 64 bits."""
+    places = (start.astype(np.int32), end.astype(np.int32))
+    return coo_array((weight, places), shape=(nodes, nodes)).tocsr()
+
+
 def lowest_passes(height: Floats, basin: Indices) -> tuple[Indices, ...]:
     """For each two basins that touch: both numbers, and the two cells of the lowest pass."""
     flat = np.arange(height.size).reshape(height.shape)
@@ -142,7 +148,7 @@ def routed_receivers(height: Floats, outlet: Mask) -> Indices:
     low, high, a, b = lowest_passes(height, basin)
     level = np.maximum(height.ravel()[a], height.ravel()[b])
     basins = pits.size + 1
-    graph = coo_array((level - level.min() + 1.0, (low, high)), shape=(basins, basins)).tocsr()
+    graph = sparse_graph(level - level.min() + 1.0, low, high, basins)
     tree = csgraph.minimum_spanning_tree(graph)
     _, parent = csgraph.breadth_first_order(tree, 0, directed=False)
     child = np.arange(1, basins)
@@ -257,8 +263,9 @@ def least_cost_line(cost: Floats, start: tuple[int, int], end: tuple[int, int]) 
         starts.append(flat[here].ravel())
         ends.append(flat[there].ravel())
         prices.append((0.5 * np.hypot(down, right) * (cost[here] + cost[there])).ravel())
-    places = (np.concatenate(starts), np.concatenate(ends))
-    graph = coo_array((np.concatenate(prices), places), shape=(cost.size, cost.size)).tocsr()
+    graph = sparse_graph(
+        np.concatenate(prices), np.concatenate(starts), np.concatenate(ends), cost.size
+    )
     first = start[0] * cost.shape[1] + start[1]
     here = end[0] * cost.shape[1] + end[1]
     _, before = csgraph.dijkstra(graph, directed=False, indices=first, return_predecessors=True)

@@ -32,10 +32,11 @@ def vertical_db(angle_deg: float) -> float:
 
 
 def main() -> None:
-    folder = Path(sys.argv[1]) if len(sys.argv) > 1 else HERE
+    folder = (Path(sys.argv[1]) if len(sys.argv) > 1 else HERE) / "lake_ondrel"
+    folder.mkdir(parents=True, exist_ok=True)
     horizontal = range(-180, 180, 5)
     vertical = [*range(-90, -30, 5), *range(-30, 31), *range(35, 91, 5)]
-    with (folder / "lake_ondrel" / "panel-65.csv").open("w", newline="", encoding="utf-8") as out:
+    with (folder / "panel-65.csv").open("w", newline="", encoding="utf-8") as out:
         writer = csv.writer(out, lineterminator="\n")
         writer.writerow(["angle_deg", "horizontal_db", "vertical_db"])
         for angle in sorted({*horizontal, *vertical}):
