@@ -135,15 +135,15 @@ def test_any_tables(tmp_path: Path, tables: dict[str, Any]) -> None:
 def test_any_value_under_a_known_key(tmp_path: Path, data: st.DataObject) -> None:
     """A good plan in which one key of one table holds something else: all else is still judged."""
     table = tomllib.loads(PLAN)
-    header = data.draw(st.sampled_from(["terrain", "model", "antenna", "radio", "tower", "sector"]))
-    target: Any = {
-        "terrain": table["terrain"],
-        "model": table["model"],
-        "antenna": table["antenna"]["panel-90"],
-        "radio": table["radio"]["access"],
-        "tower": table["tower"][0],
-        "sector": table["tower"][0]["sector"][0],
-    }[header]
+    table["output"] = {}
+    targets: list[Any] = [
+        *(table[name] for name in ("terrain", "model", "terminal", "customers", "output")),
+        table["antenna"]["panel-90"],
+        table["radio"]["access"],
+        table["tower"][0],
+        table["tower"][0]["sector"][0],
+    ]
+    target = data.draw(st.sampled_from(targets))
     target[data.draw(st.sampled_from(KEYS))] = data.draw(values)
     text = "\n".join(f"{key} = {toml(value)}" for key, value in table.items())
     read_or_refused(write_plan(tmp_path, text))

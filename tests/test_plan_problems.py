@@ -9,7 +9,7 @@ from plans import changed, write_plan
 
 from planner.errors import PlanError
 from planner.plan import read_plan
-from planner.plan.findings import MOST_PROBLEMS
+from planner.plan.findings import MOST_PROBLEMS, without
 
 EPSG_RULE = "the code of a projected CRS in metres, eastings and northings"
 ID_RULE = "1 to 64 of the letters A-Z a-z, digits, - _ . and a letter or digit first"
@@ -430,6 +430,12 @@ CASES = [
               'overwrite the input "customers.csv"; allowed: a folder of its own'],
     ),
     case(
+        "output folder that is no text",
+        ("[customers]", "[output]\nfolder = 5\n\n[customers]"),
+        says=["plan.toml: output.folder (line 49): found 5; "
+              "allowed: a folder, relative to the plan's folder"],
+    ),
+    case(
         "output folder that is a file",
         ("[customers]", '[output]\nfolder = "terrain.tif/out"\n\n[customers]'),
         says=['plan.toml: output.folder (line 49): found "terrain.tif", which is no folder; '
@@ -457,6 +463,23 @@ def test_no_tower(tmp_path: Path) -> None:
         "plan.toml: tower (line 29): found no sector; allowed: one or more sectors that are on. "
         "Add a [[tower.sector]] table"
     ]
+
+
+def test_sectors_that_are_no_tables(tmp_path: Path) -> None:
+    """Where sectors cannot be read, it is not said on top that there are none."""
+    head = changed().split("[[tower.sector]]")[0]
+    assert problems_of(write_plan(tmp_path, head + "sector = 5\n")) == [
+        "plan.toml: tower.0.sector (tower west, line 33): found 5; "
+        "allowed: up to 32 [[tower.sector]] tables"
+    ]
+
+
+def test_taking_out_leaves_the_original() -> None:
+    """The table with the unusable values taken out is another one than the file's."""
+    table = {"tower": [{"id": "a", "sector": [{"on": 1}]}], "name": "n"}
+    rest = without(table, [("tower", 0, "sector", 0, "on"), ("tower", 0, "id")])
+    assert rest == {"tower": [{"id": None, "sector": [{"on": None}]}], "name": "n"}
+    assert table == {"tower": [{"id": "a", "sector": [{"on": 1}]}], "name": "n"}
 
 
 def test_empty_file(tmp_path: Path) -> None:
@@ -567,6 +590,14 @@ def test_keys_of_very_many_parts(tmp_path: Path) -> None:
     assert problems_of(path) == [
         f"{path}: found too many dots in one line, as in deeply nested keys; "
         "allowed: keys of a few parts. Spread long lists over several lines"
+    ]
+
+
+def test_collections_without_end(tmp_path: Path) -> None:
+    """A table or list of more elements than any plan has is refused before it is looked through."""
+    path = write_plan(tmp_path, "\n".join(f"[radio.r{number}]" for number in range(10_001)))
+    assert problems_of(path) == [
+        f"{path}: found a table or list of 10,001 elements; allowed: up to 10,000"
     ]
 
 

@@ -15,6 +15,16 @@ from planner.io.terrain_files import TerrainSource
 from planner.network import Radio, Sector, Terminal
 from planner.plan import EirpExcess, eirp_excesses, read_plan
 
+UPPER_RADIO = """\
+[radio.upper]
+frequency_mhz = 11_000.0
+channel_width_mhz = 40
+transmit_power_dbm = 10
+noise_figure_db = 6
+
+"""
+SECOND_SECTOR = 'radio = "access"\nantenna_height_m = 30\nazimuth_deg = 140'
+
 
 def test_every_key_arrives_in_its_unit(tmp_path: Path) -> None:
     """Names, numbers and files of the plan are those of the object; kilometres become metres."""
@@ -145,15 +155,8 @@ def test_projected_coordinates_of_a_tower(tmp_path: Path, epsg: int) -> None:
 def test_patterns_follow_antenna_and_frequency(tmp_path: Path) -> None:
     """One antenna with two radios gives two patterns, each at its radio's frequency."""
     text = changed(
-        (
-            "[terminal]",
-            "[radio.upper]\nfrequency_mhz = 11_000.0\nchannel_width_mhz = 40\n"
-            "transmit_power_dbm = 10\nnoise_figure_db = 6\n\n[terminal]",
-        ),
-        (
-            'radio = "access"\nantenna_height_m = 30\nazimuth_deg = 140',
-            'radio = "upper"\nantenna_height_m = 30\nazimuth_deg = 140',
-        ),
+        ("[terminal]", UPPER_RADIO + "[terminal]"),
+        (SECOND_SECTOR, SECOND_SECTOR.replace("access", "upper")),
     )
     patterns = read_plan(write_plan(tmp_path, text)).patterns
     low, high = patterns["west-1"], patterns["west-2"]
@@ -210,7 +213,7 @@ def test_other_spellings_of_the_same_file(tmp_path: Path) -> None:
 
 
 def test_pattern_file(tmp_path: Path) -> None:
-    """An antenna may be a file of two cuts; the plan names the files that it read."""
+    """An antenna may be a file of two cuts, read once for all radios; the plan names the file."""
     rows = ["cut,angle_deg,level_db"]
     for cut in ("h", "v"):
         rows += [f"{cut},{angle},{-min(30, abs(angle) // 4)}" for angle in range(-180, 180, 10)]
@@ -218,6 +221,8 @@ def test_pattern_file(tmp_path: Path) -> None:
     text = changed(
         ('formula = "F.1336-5"', 'file = "panel.csv"'),
         ("azimuth_beamwidth_deg = 90\nelevation_beamwidth_deg = 7\n", ""),
+        ("[terminal]", UPPER_RADIO + "[terminal]"),
+        (SECOND_SECTOR, SECOND_SECTOR.replace("access", "upper")),
     )
     plan = read_plan(write_plan(tmp_path, text))
     pattern = plan.patterns["west-1"]
