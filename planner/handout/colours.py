@@ -1,8 +1,8 @@
 """Colours, tones and type sizes that map and pictures share.
 
 Ink on paper: the ground is a warm low-contrast relief, signal is ink, one accent marks what the
-reader should act on. The signal ramp is F. Crameri's scientific colour map "davos", reversed (even in
-lightness, readable for colour-blind people); the sector hues are those of M. Okabe and K. Ito,
+reader should act on. The signal ramp is F. Crameri's scientific colour map "davos", reversed (even
+in lightness, readable for colour-blind people); the sector hues are those of M. Okabe and K. Ito,
 "Color Universal Design" (2008). See docs/references.md.
 """
 
