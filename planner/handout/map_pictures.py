@@ -111,7 +111,8 @@ def _with_line_and_dots(
     view: MercatorView,
 ) -> str:
     status = view.shown(coverage.status, OUT_OF_RANGE)
-    rows, cols = np.indices(codes.shape, sparse=True)
+    rows = np.arange(codes.shape[0])[:, np.newaxis]
+    cols = np.arange(codes.shape[1])[np.newaxis, :]
     shifted = (cols + (rows // _DOT_SPACING_PX % 2) * (_DOT_SPACING_PX // 2)) % _DOT_SPACING_PX
     dots = np.isin(status, (NO_DATA, CROSSES_HOLE)) & (rows % _DOT_SPACING_PX == 0) & (shifted == 0)
     codes = codes.copy()

@@ -1,0 +1,305 @@
+"""The whole job: demo sites and real elevation data from plan file to finished outputs."""
+
+import json
+import math
+import shutil
+from pathlib import Path
+
+import geopandas
+import numpy as np
+import pandas as pd
+import pytest
+import rasterio
+import rasterio.warp
+from places import jacksboro_degrees
+
+from planner.customers import check_customers
+from planner.io.terrain_files import read_terrain
+from planner.plan import read_plan
+from planner.plan.demo import demo_plan_path
+from planner.plan.run import RunResult, run_plan
+
+SITES = Path(__file__).parents[1] / "demo_sites"
+LAYERS = ("received_signal.tif", "best_server.tif", "server_margin.tif")
+
+
+@pytest.fixture(scope="module")
+def harrow(tmp_path_factory) -> RunResult:
+    folder = tmp_path_factory.mktemp("harrow")
+    return run_plan(read_plan(SITES / "harrow_vale" / "plan.toml"), folder=folder)
+
+
+@pytest.fixture(scope="module")
+def ondrel(tmp_path_factory) -> RunResult:
+    folder = tmp_path_factory.mktemp("ondrel")
+    return run_plan(read_plan(SITES / "lake_ondrel" / "plan.toml"), folder=folder)
+
+
+def jacksboro_plan(folder: Path, **model: object) -> Path:
+    """A plan on the USGS grid in degrees, as a file without a nodata tag."""
+    elevation, transform = jacksboro_degrees()
+    with rasterio.open(
+        folder / "jacksboro.tif",
+        "w",
+        driver="GTiff",
+        width=elevation.shape[1],
+        height=elevation.shape[0],
+        count=1,
+        dtype="int16",
+        crs="EPSG:4326",
+        transform=transform,
+    ) as raster:
+        raster.write(elevation, 1)
+    settings = {"radius_km": 8, **model}
+    lines = "\n".join(f"{key} = {value}" for key, value in settings.items())
+    (folder / "customers.csv").write_text(
+        "id,address,latitude,longitude\n"
+        "near,1 Ridge Road,36.60,-84.24\nfar,9 Far Road,36.47,-84.08\nlost,no place,,\n",
+        encoding="utf-8",
+    )
+    path = folder / "plan.toml"
+    path.write_text(
+        f"""
+name = "Ridge above the fault"
+[terrain]
+rasters = ["jacksboro.tif"]
+[model]
+{lines}
+[antenna.panel]
+formula = "TR 36.814"
+gain_dbi = 17
+azimuth_beamwidth_deg = 70
+elevation_beamwidth_deg = 10
+[radio.access]
+frequency_mhz = 5600
+channel_width_mhz = 20
+transmit_power_dbm = 19
+feeder_loss_db = 1
+noise_figure_db = 5
+eirp_limit_dbm = 36
+[terminal]
+antenna_height_m = 5
+antenna_gain_dbi = 19
+service_threshold_dbm = -75
+[[tower]]
+id = "ridge"
+latitude = 36.58
+longitude = -84.25
+[[tower.sector]]
+id = "ridge-1"
+antenna = "panel"
+radio = "access"
+antenna_height_m = 30
+azimuth_deg = 40
+mechanical_downtilt_deg = 2
+[[tower.sector]]
+id = "ridge-2"
+antenna = "panel"
+radio = "access"
+antenna_height_m = 24
+azimuth_deg = 220
+[customers]
+file = "customers.csv"
+""",
+        encoding="utf-8",
+    )
+    return path
+
+
+def test_a_demo_site_gives_every_file_that_is_promised(harrow):
+    """Layers, customer tables, map and record; nothing else but the classes' side file."""
+    assert sorted(file.name for file in harrow.folder.iterdir()) == sorted(
+        [
+            *LAYERS,
+            "best_server.tif.aux.xml",
+            "path_loss_shoulder.tif",
+            "customers.csv",
+            "customers.gpkg",
+            "map.html",
+            "run.json",
+        ]
+    )
+    assert harrow.demands_met
+    assert json.loads((harrow.folder / "run.json").read_text(encoding="utf-8")) == harrow.record
+
+
+def test_layers_agree_with_each_other(harrow):
+    """Signal, server and margin are about the same cells; the threshold divides them."""
+    arrays = {}
+    for name in LAYERS:
+        with rasterio.open(harrow.folder / name) as layer:
+            arrays[name] = layer.read(1)
+            assert layer.crs.to_epsg() == 32710
+            assert layer.block_shapes == [(256, 256)]
+            assert layer.overviews(1)
+            assert layer.tags()["PLAN_SHA256"] == harrow.record["plan"]["sha256"]
+            assert layer.tags()["FREQUENCY_MHZ"] == "5600"
+    signal, server, margin = (arrays[name] for name in LAYERS)
+    np.testing.assert_array_equal(np.isnan(signal), server == -1)
+    np.testing.assert_array_equal(signal >= np.float32(-75.0), server > 0)
+    assert set(np.unique(server)) == {-1, 0, 1, 2, 3}
+    assert np.nanmin(margin) >= 0.0
+    counts = harrow.record["counts"]
+    assert counts["cells_computed"] == int((server >= 0).sum())
+    assert counts["cells_served"] == int((server > 0).sum())
+
+
+def test_received_signal_is_the_budget_over_the_path_loss(harrow):
+    """Power - feeder + gain - path loss + terminal gain: within the pattern's limits everywhere."""
+    with rasterio.open(harrow.folder / "path_loss_shoulder.tif") as layer:
+        loss = layer.read(1)
+        assert layer.units == ("dB",)
+    with rasterio.open(harrow.folder / "received_signal.tif") as layer:
+        signal = layer.read(1)
+        assert layer.units == ("dBm",)
+    gain = signal + loss - (19.0 - 1.0 + 19.0)
+    assert np.nanmax(gain) <= 17.001
+    assert np.nanmax(gain) > 16.5
+
+
+def test_customers_rows_and_map_pixels_agree(harrow):
+    """Every computed customer's signal is that of its pixel, within the map/path tolerance."""
+    table = pd.read_csv(harrow.folder / "customers.csv")
+    source = pd.read_csv(SITES / "harrow_vale" / "customers.csv")
+    assert list(table["id"]) == list(source["id"])
+    points = geopandas.read_file(harrow.folder / "customers.gpkg")
+    assert list(points["id"]) == list(source["id"])
+    computed = table["received_signal_dbm"].notna() & source["height_m"].isna()
+    inside = points[computed.to_numpy()].to_crs(32710)
+    with rasterio.open(harrow.folder / "received_signal.tif") as layer:
+        pixels = np.array([v[0] for v in layer.sample([(p.x, p.y) for p in inside.geometry])])
+    difference = np.abs(pixels - table.loc[computed, "received_signal_dbm"].to_numpy())
+    assert computed.sum() > 100
+    assert np.median(difference) <= 0.3  # a pixel stands for up to half a cell around its centre
+    assert np.percentile(difference, 90) <= 3.0
+    verdicts = table["verdict"].value_counts()
+    assert int(verdicts["served"]) == harrow.record["counts"]["customers_served"]
+    assert 0.5 <= verdicts["served"] / len(table) <= 0.9
+
+
+def test_the_same_inputs_give_the_same_bytes(harrow, tmp_path):
+    """A second run writes the same bytes in every file but the record, which holds the clock."""
+    again = run_plan(read_plan(SITES / "harrow_vale" / "plan.toml"), folder=tmp_path)
+    for file in sorted(harrow.folder.iterdir()):
+        if file.name != "run.json":
+            assert (tmp_path / file.name).read_bytes() == file.read_bytes(), file.name
+    first, second = dict(harrow.record), dict(again.record)
+    assert first.pop("stages") != second.pop("stages")
+    assert first == second
+
+
+def test_the_lake_site_uses_tiles_woods_and_three_kinds_of_antenna(ondrel):
+    """Two tiles in degrees and a canopy raster are resampled; bad rows say why."""
+    record = ondrel.record
+    assert record["model"]["grid"] == "EPSG:32710"
+    assert len(record["inputs"]) >= 5
+    assert record["counts"]["towers"] >= 3
+    table = pd.read_csv(ondrel.folder / "customers.csv")
+    counts = record["counts"]
+    assert len(table) == counts["customers"]
+    assert counts["customers_not_computed"] >= 3
+    unexplained = table[(table["verdict"] != "served") & table["reason"].isna()]
+    assert unexplained.empty
+    for tower in ("marl-head", "sallow-knoll", "north-brow"):
+        assert (ondrel.folder / f"path_loss_{tower}.tif").is_file()
+
+
+def test_real_elevation_in_degrees_from_plan_to_map(tmp_path):
+    """The USGS grid of the Jacksboro fault: resampled to UTM, two antenna heights, all files."""
+    result = run_plan(read_plan(jacksboro_plan(tmp_path)))
+    assert result.folder == tmp_path / "out"
+    assert result.record["model"]["grid"] == "EPSG:32616"
+    assert 70.0 < result.record["model"]["cell_m"] < 95.0
+    names = {file.name for file in result.folder.iterdir()}
+    assert {"path_loss_ridge.tif", "path_loss_ridge_24m_5600mhz.tif"} <= names
+    table = pd.read_csv(result.folder / "customers.csv").set_index("id")
+    assert table.loc["near", "verdict"] in ("served", "not served")
+    assert table.loc["far", "verdict"] == "not computed"
+    assert table.loc["lost", "verdict"] == "not computed"
+    assert math.isnan(table.loc["lost", "received_signal_dbm"])
+    assert not table.loc["near", "reason"] or isinstance(table.loc["far", "reason"], str)
+    cells = result.record["counts"]["cells_computed"]
+    expected = math.pi * 8000.0**2 / result.record["model"]["cell_m"] ** 2
+    assert cells == pytest.approx(expected, rel=0.01)
+
+
+def test_only_the_layers_asked_for_are_written(tmp_path):
+    """A plan that asks for one layer gets one layer."""
+    path = jacksboro_plan(tmp_path)
+    text = path.read_text(encoding="utf-8")
+    path.write_text(text + '[output]\nlayers = ["best_server"]\n', encoding="utf-8")
+    result = run_plan(read_plan(path), folder=tmp_path / "results")
+    tifs = sorted(file.name for file in result.folder.glob("*.tif"))
+    assert tifs == ["best_server.tif"]
+
+
+def test_progress_names_the_stages_and_an_interrupt_leaves_no_file(tmp_path):
+    """Stages report from 0 to 1; Ctrl-C during the sweep leaves the output folder untouched."""
+    plan = read_plan(jacksboro_plan(tmp_path))
+    seen: dict[str, list[float]] = {}
+
+    def interrupt(stage: str, share: float) -> None:
+        seen.setdefault(stage, []).append(share)
+        if stage == "path field ridge" and share > 0.5:
+            raise KeyboardInterrupt
+
+    with pytest.raises(KeyboardInterrupt):
+        run_plan(plan, progress=interrupt)
+    assert not (tmp_path / "out").exists()
+    assert seen["read terrain"][0] == 0.0
+    assert seen["read terrain"][-1] == 1.0
+
+
+def test_the_demo_site_of_the_package_is_the_one_in_the_source_tree():
+    """`planner demo` runs a plan that can be read."""
+    assert read_plan(demo_plan_path()).name
+
+
+def test_a_customer_is_checked_as_on_its_own(harrow):
+    """A row of the list does not depend on the other rows."""
+    plan = read_plan(SITES / "harrow_vale" / "plan.toml")
+    from planner.io.customer_files import read_customers
+
+    customers = read_customers(plan.customers_file)
+    places = [(tower.latitude, tower.longitude) for tower in plan.towers]
+    terrain = read_terrain(plan.terrain, places, plan.radius_m)
+    alone = check_customers(
+        terrain,
+        plan.towers,
+        plan.patterns,
+        plan.terminal,
+        customers[17:18],
+        radius_m=plan.radius_m,
+        k_factor=plan.k_factor,
+        polarization=plan.polarization,
+        obstacle_clearing_m=plan.obstacle_clearing_m,
+    )[0]
+    row = pd.read_csv(harrow.folder / "customers.csv").iloc[17]
+    assert row["received_signal_dbm"] == pytest.approx(alone.received_signal_dbm, abs=0.006)
+    assert row["bearing_to_tower_deg"] == pytest.approx(alone.bearing_to_tower_deg, abs=0.006)
+
+
+@pytest.mark.parametrize(
+    "name", ["bigtujunga.tif", "srtm_oetztal.tif", "N33E035.hgt", "N57E011.hgt"]
+)
+def test_real_rasters_beside_the_checkout(name, tmp_path):
+    """Each shared raster gives a run: projected, degrees without nodata tag, bathymetry, coast."""
+    raster = Path(__file__).parents[2] / "shared" / "terrain" / name
+    if not raster.is_file():
+        pytest.skip(f"no {name} beside the checkout")
+    shutil.copy(raster, tmp_path / name)
+    with rasterio.open(raster) as dataset:
+        array = dataset.read(1)
+        row, col = np.unravel_index(np.argmax(array), array.shape)
+        row = min(max(int(row), 60), array.shape[0] - 60)
+        col = min(max(int(col), 60), array.shape[1] - 60)
+        x, y = dataset.xy(row, col)
+        lon, lat = rasterio.warp.transform(dataset.crs, "EPSG:4326", [x], [y])
+    path = jacksboro_plan(tmp_path, radius_km=5)
+    text = path.read_text(encoding="utf-8").replace("jacksboro.tif", name)
+    text = text.replace("latitude = 36.58", f"latitude = {lat[0]}")
+    text = text.replace("longitude = -84.25", f"longitude = {lon[0]}")
+    path.write_text(text, encoding="utf-8")
+    result = run_plan(read_plan(path))
+    assert result.record["counts"]["cells_computed"] > 3000
+    assert result.record["counts"]["customers_not_computed"] == 3
