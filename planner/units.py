@@ -1,4 +1,4 @@
-"""Constants with their sources, decibel arithmetic and exact angles. Formulas elsewhere, units here."""
+"""Constants with their sources, decibel arithmetic and exact angles."""
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray

@@ -127,7 +127,9 @@ def _check_whole(path: Path, array: NDArray[np.generic], factors: list[int], tar
     """GDAL may keep silent about a full disk until the file is read: read its last row of tiles."""
     with rasterio.open(path) as layer:
         last_row = layer.read(1, window=((array.shape[0] - 1, array.shape[0]), (0, array.shape[1])))
-        whole = np.array_equal(last_row[0], array[-1], equal_nan=np.issubdtype(array.dtype, np.floating))
+        whole = np.array_equal(
+            last_row[0], array[-1], equal_nan=np.issubdtype(array.dtype, np.floating)
+        )
         if not whole or layer.overviews(1) != factors:
             raise OutputError(f"{target}: could not be written whole; is the disk full?")
 

@@ -1,5 +1,7 @@
 """The Bullington construction on one profile, ITU-R P.526-15 section 4.5.1.
 
+Equation numbers are from memory; tests hold the results to published examples.
+
 ======================  =====  ====================================================================
 symbol of the source    unit   meaning here
 ======================  =====  ====================================================================

@@ -64,6 +64,6 @@ def free_space_loss_db(distance_m: ArrayLike, frequency_mhz: ArrayLike) -> Any:
 
     References
     ----------
-    ITU-R P.525-4 (2019), equation (3) and (4).
+    ITU-R P.525-4 (2019), equation (3) and (4); number from memory.
     """
     return _free_space_loss_db(distance_m, frequency_mhz)

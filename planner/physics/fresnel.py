@@ -48,7 +48,7 @@ def fresnel_radius_m(
 
     References
     ----------
-    ITU-R P.526-15 (2019), section 2.1, equation (2) with n = 1, in metres.
+    ITU-R P.526-15 (2019), section 2.1, the n = 1 zone, in metres.
     """
     return _fresnel_radius_m(distance_a_m, distance_b_m, wavelength_m)
 
@@ -78,6 +78,6 @@ def fresnel_parameter(
 
     References
     ----------
-    ITU-R P.526-15 (2019), section 4.1, equation (26).
+    ITU-R P.526-15 (2019), section 4.1, equation (26); number from memory.
     """
     return _fresnel_parameter(height_m, distance_a_m, distance_b_m, wavelength_m)

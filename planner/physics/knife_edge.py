@@ -43,6 +43,6 @@ def knife_edge_loss_db(nu: ArrayLike) -> Any:
 
     References
     ----------
-    ITU-R P.526-15 (2019), section 4.1, equation (31).
+    ITU-R P.526-15 (2019), section 4.1, equation (31); number from memory.
     """
     return _knife_edge_loss_db(nu)

@@ -1,6 +1,7 @@
 """Effective antenna heights over a smooth surface fitted to the terrain, ITU-R P.1812-7 5.6.2.
 
-The fit uses bare ground, without obstacles and without earth curvature.
+The fit uses bare ground, without obstacles and without earth curvature. Equation numbers are from
+memory; tests hold the results to published examples.
 """
 
 import math

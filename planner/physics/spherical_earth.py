@@ -1,7 +1,8 @@
 """Diffraction over a smooth spherical earth, ITU-R P.526-15 section 3.
 
-Written as in P.1812-7 section 4.3.2 and 4.3.3, which repeats P.526 with the units used here.
-Heights in metres above the smooth surface, distances and radii in km, frequency in GHz inside.
+Written as in P.1812-7 sections 4.3.2 and 4.3.3, which repeat P.526 with the units used here: heights
+in metres above the smooth surface, distances and radii in km, frequency in GHz inside. Section and
+equation numbers are from memory; tests hold the results to published examples.
 """
 
 import math
@@ -101,7 +102,7 @@ def _first_term_mixed_loss_db(
 def nearest_clearance_m_scalar(
     distance_m: float, tx_height_m: float, rx_height_m: float, earth_radius_m: float
 ) -> tuple[float, float]:
-    """Where the ray clears the sphere least and by how much; P.526-15 equations (22) to (25).
+    """Where the ray clears the sphere least and by how much; P.526-15 section 3.2.
 
     Returns the point's distance from the transmitter [m] and the clearance there [m]. The point is
     the one with the largest nu, which is also the geometric reflection point.
@@ -162,7 +163,7 @@ def spherical_earth_loss_db_scalar(
     required = 17.456 * math.sqrt(d1 * d2 * wavelength_m / d)
     if clearance > required:
         return 0.0
-    # Equations (26) and (27): a smaller earth whose horizon is just at this distance.
+    # A smaller earth whose horizon is just at this distance.
     modified_radius = 500.0 * (d / (math.sqrt(tx_height_m) + math.sqrt(rx_height_m))) ** 2
     loss = _first_term_mixed_loss_db(
         d, tx_height_m, rx_height_m, modified_radius, f, vertical, sea_fraction

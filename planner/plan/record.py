@@ -18,6 +18,13 @@ def file_sha256(path: Path) -> str:
         return hashlib.file_digest(file, "sha256").hexdigest()
 
 
+def input_files(plan: Plan) -> list[Path]:
+    """Every file that a run of the plan reads."""
+    files = [plan.path, *plan.terrain.rasters, plan.terrain.obstacles, plan.customers_file]
+    files += plan.pattern_files
+    return [path for path in files if path is not None]
+
+
 def run_record(
     plan: Plan,
     terrain: Terrain,
@@ -25,14 +32,13 @@ def run_record(
     answers: tuple[CustomerAnswer, ...],
     stages: list[dict[str, Any]],
     files: list[str],
+    notes: tuple[str, ...] = (),
 ) -> dict[str, Any]:
     """Everything that run.json holds; only ``stages`` holds the clock."""
     excesses = eirp_excesses(plan)
-    inputs = [plan.path, *plan.terrain.rasters, plan.terrain.obstacles, plan.customers_file]
-    inputs += list(plan.pattern_files)
     counts = coverage.counts
     verdicts = [answer.verdict for answer in answers]
-    warnings = [*terrain.warnings]
+    warnings = [*terrain.warnings, *notes]
     warnings += [note for pattern in plan.patterns.values() for note in pattern.notes]
     warnings += [
         f"sector {excess.sector_id}: EIRP {excess.eirp_dbm:.1f} dBm is above the plan's limit of "
@@ -43,9 +49,7 @@ def run_record(
     return {
         "software": f"ptmp-planner {__version__}",
         "plan": {"name": plan.name, "file": plan.path.name, "sha256": plan.hash},
-        "inputs": [
-            {"file": path.name, "sha256": file_sha256(path)} for path in inputs if path is not None
-        ],
+        "inputs": [{"file": path.name, "sha256": file_sha256(path)} for path in input_files(plan)],
         "model": {
             "method": MODEL,
             "radius_m": plan.radius_m,

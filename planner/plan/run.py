@@ -12,14 +12,16 @@ from planner import __version__
 from planner.antenna import GainTable, gain_table
 from planner.coverage import combine
 from planner.customers import CustomerAnswer, check_customers
+from planner.errors import PlanError, Problem
 from planner.handout.offline_map import write_offline_map
 from planner.io.atomic import replaced
-from planner.io.customer_files import read_customers, write_customers_csv, write_customers_gpkg
+from planner.io.customer_files import read_customer_list, write_customers_csv, write_customers_gpkg
 from planner.io.terrain_files import read_terrain
 from planner.network import Customer, Sector, Tower
+from planner.plan.checks import clashes
 from planner.plan.outputs import write_coverage_layers, write_path_loss
 from planner.plan.read import Plan
-from planner.plan.record import run_record
+from planner.plan.record import input_files, run_record
 from planner.sweep import PathField, path_field
 from planner.terrain import Terrain
 
@@ -66,10 +68,13 @@ def run_plan(
     folder = plan.output_folder if folder is None else folder
     stages = _Stages(progress)
     towers = tuple(tower for tower in plan.towers if tower.sectors)
+    _refuse_overwriting(plan, folder)
     customers: tuple[Customer, ...] = ()
+    notes: tuple[str, ...] = ()
     if plan.customers_file is not None:
         with stages.stage("read customers"):
-            customers = read_customers(plan.customers_file)
+            customer_list = read_customer_list(plan.customers_file)
+            customers, notes = customer_list.customers, customer_list.notes
     with stages.stage("read terrain") as report:
         terrain = read_terrain(
             plan.terrain,
@@ -129,10 +134,26 @@ def run_plan(
             online_base_map=plan.online_base_map,
         )
         files.append("map.html")
-    record = run_record(plan, terrain, coverage, answers, stages.seconds, [*files, "run.json"])
+    record = run_record(
+        plan, terrain, coverage, answers, stages.seconds, [*files, "run.json"], notes
+    )
     with replaced(folder / "run.json") as target:
         target.write_text(json.dumps(record, indent=2, ensure_ascii=False) + "\n", encoding="utf-8")
     return RunResult(folder=folder, record=record, demands_met=not record["eirp_above_limit"])
+
+
+def _refuse_overwriting(plan: Plan, folder: Path) -> None:
+    """Results may not replace what they are made from, wherever --out points."""
+    hit = clashes(folder, input_files(plan))
+    if hit:
+        raise PlanError(
+            Problem(
+                where=str(path),
+                found="an input that a result would overwrite",
+                advice="Choose another output folder or rename the input",
+            )
+            for path in hit
+        )
 
 
 def field_key(sector: Sector) -> tuple[float, float]:
