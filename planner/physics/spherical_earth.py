@@ -1,8 +1,8 @@
 """Diffraction over a smooth spherical earth, ITU-R P.526-15 section 3.
 
 Written as in P.1812-7 sections 4.3.2 and 4.3.3, which repeat P.526 with the units used here:
-heights in metres above the smooth surface, distances and radii in km, frequency in GHz inside. Section
-and equation numbers are from memory; tests hold the results to published examples.
+heights in metres above the smooth surface, distances and radii in km, frequency in GHz inside.
+Section and equation numbers are from memory; tests hold the results to published examples.
 """
 
 import math
