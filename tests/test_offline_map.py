@@ -168,6 +168,17 @@ def test_hostile_text_stays_inside_the_data(page):
     assert counts[0] == counts[1]
 
 
+@pytest.mark.parametrize(
+    "name", ["{{7*7}}", "{%endraw%}{{7*7}}{%raw%}", "{% endr{% endraw %}aw %}{{7*7}}{% raw %}"]
+)
+def test_a_name_is_never_run_as_a_template(name, tmp_path):
+    """Template marks in a plan's name or an address come out as they went in."""
+    made_map(tmp_path / "map.html", hostile=name)
+    text = (tmp_path / "map.html").read_text(encoding="utf-8")
+    assert f"<title>Field {name}</title>" in text
+    assert f'"title":"Field {name}"' in text
+
+
 def test_the_same_inputs_give_the_same_page(page, tmp_path):
     """No clock, no random name."""
     made_map(tmp_path / "map.html")
@@ -255,6 +266,8 @@ def test_values_under_the_pointer_are_those_of_the_layers(page, chromium):
         )
         around = (slice(max(row - 1, 0), row + 2), slice(max(col - 1, 0), col + 2))
         signal = -140.0 + 0.5 * (found["signal"] - 1)
+        margin = -40.0 + 0.5 * (found["margin"] - 1)
+        assert (np.abs(coverage.server_margin_db[around] - margin) <= 0.26).any()
         same = np.abs(coverage.received_signal_dbm[around] - signal) <= 0.26
         server = np.maximum(coverage.best_server[around], 0) == found["server"]
         assert (same & server).any()

@@ -6,7 +6,8 @@ in lightness, readable for colour-blind people); the sector hues are those of M.
 "Color Universal Design" (2008). See docs/references.md.
 """
 
-from itertools import cycle, islice
+import numpy as np
+from numpy.typing import NDArray
 
 PAPER = "#fcfaf5"
 STONE = "#9e9992"
@@ -35,9 +36,28 @@ SECTOR_OPACITY = 0.55
 SMALL_PT, TEXT_PT, TITLE_PT = 7.5, 9.0, 12.0
 
 
-def sector_colours(count: int) -> tuple[str, ...]:
-    """One hue a sector, in plan order; after six they begin again, so areas also carry labels."""
-    return tuple(islice(cycle(SECTOR_HUES), count))
+def sector_colours(best_server: NDArray[np.int16], count: int) -> tuple[str, ...]:
+    """One hue a sector, in plan order, neighbours apart as far as six hues allow.
+
+    ``best_server`` numbers each cell's sector from 1. Sector by sector, the hue is taken that has
+    the shortest common border with sectors that have it already, and of these the least used.
+    """
+    borders = np.zeros((count + 1, count + 1))
+    for one, other in (
+        (best_server[:, 1:], best_server[:, :-1]),
+        (best_server[1:, :], best_server[:-1, :]),
+    ):
+        meet = (one != other) & (one > 0) & (other > 0)
+        np.add.at(borders, (one[meet], other[meet]), 1.0)
+    borders += borders.T
+    chosen: list[int] = []
+    for number in range(1, count + 1):
+        shared = [
+            sum(borders[number, before + 1] for before, hue in enumerate(chosen) if hue == h)
+            for h in range(len(SECTOR_HUES))
+        ]
+        chosen.append(min(range(len(SECTOR_HUES)), key=lambda h: (shared[h], chosen.count(h), h)))
+    return tuple(SECTOR_HUES[hue] for hue in chosen)
 
 
 def signal_classes(

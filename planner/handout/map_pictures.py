@@ -18,7 +18,6 @@ from planner.handout.colours import (
     SIGNAL_OPACITY,
     STONE,
     rgb,
-    sector_colours,
 )
 from planner.handout.hillshade import hillshade
 from planner.handout.mercator import MercatorView
@@ -27,6 +26,7 @@ from planner.terrain import Terrain
 
 SIGNAL_FLOOR_DBM = -140.0  # code 1 of the read-out; weaker signals are shown as "at most" this
 SIGNAL_STEP_DB = 0.5
+MARGIN_FLOOR_DB = -40.0  # code 1; negative where the strongest sector misses its own threshold
 NOTHING = 0  # code of the read-out: not computed
 _TONES = 48
 _DOT_SPACING_PX = 7
@@ -60,11 +60,12 @@ def signal_picture(coverage: Coverage, view: MercatorView, classes: Classes) -> 
     return _with_line_and_dots(codes, palette, edge, coverage, view)
 
 
-def server_picture(coverage: Coverage, view: MercatorView, sectors: int) -> str:
+def server_picture(coverage: Coverage, view: MercatorView, colours: Sequence[str]) -> str:
     """Each sector's area in its hue, dots where data is missing."""
     server = view.shown(coverage.best_server, -1)
-    hues = tuple(dict.fromkeys(sector_colours(sectors)))
-    codes = np.where(server > 0, 1 + (server - 1) % max(len(hues), 1), 0).astype(np.uint8)
+    hues = tuple(dict.fromkeys(colours))
+    code_of_sector = np.array([0, *(1 + hues.index(colour) for colour in colours)], dtype=np.uint8)
+    codes = code_of_sector[np.maximum(server, 0)]
     alpha = round(255 * SECTOR_OPACITY)
     palette = [(0, 0, 0, 0), *((*rgb(hue), alpha) for hue in hues)]
     across = np.zeros(server.shape, dtype=bool)
@@ -81,7 +82,7 @@ def read_out(coverage: Coverage, view: MercatorView) -> dict[str, str]:
     status = view.shown(coverage.status, OUT_OF_RANGE)
     with np.errstate(invalid="ignore"):
         steps = np.clip(np.rint((signal - SIGNAL_FLOOR_DBM) / SIGNAL_STEP_DB), 0, 253)
-        margins = np.clip(np.rint(margin / SIGNAL_STEP_DB), 0, 253)
+        margins = np.clip(np.rint((margin - MARGIN_FLOOR_DB) / SIGNAL_STEP_DB), 0, 253)
     return {
         "signal": _packed(np.where(np.isnan(signal), NOTHING, 1 + steps).astype(np.uint8)),
         "margin": _packed(np.where(np.isnan(margin), NOTHING, 1 + margins).astype(np.uint8)),

@@ -18,12 +18,13 @@ import folium
 import numpy as np
 from branca.element import Element
 
-from planner.antenna import Pattern
+from planner.antenna import Pattern, half_power_edges_deg
 from planner.coverage import Coverage
 from planner.customers import CustomerAnswer
 from planner.geodesy import point_at
 from planner.handout.colours import sector_colours, signal_classes
 from planner.handout.map_pictures import (
+    MARGIN_FLOOR_DB,
     SIGNAL_FLOOR_DBM,
     SIGNAL_STEP_DB,
     label_places,
@@ -46,6 +47,17 @@ class _OfflineMap(folium.Map):
 
     default_js: list[tuple[str, str]] = []  # noqa: RUF012  folium reads them from the class
     default_css: list[tuple[str, str]] = []  # noqa: RUF012
+
+
+class _Literal(Element):
+    """Text that goes into the page as it is: never read as a template, whatever it holds."""
+
+    def __init__(self, text: str) -> None:
+        super().__init__()
+        self._text = text
+
+    def render(self, **kwargs: Any) -> str:
+        return self._text
 
 
 def write_offline_map(
@@ -90,6 +102,7 @@ def _page(
     # The few cells under the mast would stretch the ramp over signals that nobody maps.
     strongest_dbm = float(np.percentile(served, 99.0)) if served.size else threshold_dbm
     classes = signal_classes(threshold_dbm, strongest_dbm) if sectors else ()
+    colours = sector_colours(coverage.best_server, len(sectors))
     data = {
         "title": title,
         "version": version,
@@ -104,6 +117,7 @@ def _page(
         "longest_side_px": LONGEST_SIDE_PX,
         "signal_floor_dbm": SIGNAL_FLOOR_DBM,
         "signal_step_db": SIGNAL_STEP_DB,
+        "margin_floor_db": MARGIN_FLOOR_DB,
         "threshold_dbm": threshold_dbm if sectors else None,
         "classes": [
             {"from_dbm": lower, "to_dbm": None if math.isinf(upper) else upper, "colour": colour}
@@ -111,12 +125,12 @@ def _page(
         ],
         "relief": relief_picture(terrain, view),
         "signal": signal_picture(coverage, view, classes),
-        "server": server_picture(coverage, view, len(sectors)),
+        "server": server_picture(coverage, view, colours),
         "values": read_out(coverage, view),
         "labels": _labels(terrain, coverage, sectors),
         "sectors": [
             {"id": sector.id, "colour": colour}
-            for sector, colour in zip(sectors, sector_colours(len(sectors)), strict=True)
+            for sector, colour in zip(sectors, colours, strict=True)
         ],
         "towers": [_tower(tower, patterns, terrain) for tower in towers],
         "customers": [_customer(answer) for answer in answers],
@@ -150,19 +164,14 @@ def _page(
         f"<style>{_without_pictures(_asset('leaflet-1.9.4/leaflet.css'))}</style>\n"
         f"<style>{_asset('map.css')}</style>\n<script>{leaflet}</script>"
     )
-    figure.header.add_child(Element(_literal(head)), name="planner_head")
+    figure.header.add_child(_Literal(head), name="planner_head")
     body = (
         _asset("map_panel.html")
         + f'<script type="application/json" id="planner-data">{_embedded(data)}</script>'
     )
-    figure.html.add_child(Element(_literal(body)), name="planner_body")
-    figure.script.add_child(Element(_literal(_asset("map.js"))), name="planner_script")
+    figure.html.add_child(_Literal(body), name="planner_body")
+    figure.script.add_child(_Literal(_asset("map.js")), name="planner_script")
     return str(figure.render())
-
-
-def _literal(text: str) -> str:
-    """Text that jinja, which folium renders elements with, leaves as it is."""
-    return "{% raw %}" + text.replace("{% endraw %}", "") + "{% endraw %}"
 
 
 def _asset(name: str) -> str:
@@ -175,11 +184,10 @@ def _without_pictures(css: str) -> str:
 
 
 def _embedded(data: dict[str, Any]) -> str:
-    """JSON that cannot end the script element it stands in, nor reach jinja's marks."""
+    """JSON that cannot end the script element it stands in."""
     text = json.dumps(data, ensure_ascii=True, allow_nan=False, separators=(",", ":"))
-    for character in "<>&{}%":
-        if character not in "{}":
-            text = text.replace(character, f"\\u{ord(character):04x}")
+    for character in "<>&":
+        text = text.replace(character, f"\\u{ord(character):04x}")
     return text
 
 
@@ -214,11 +222,12 @@ def _tower(tower: Tower, patterns: Mapping[str, Pattern], terrain: Terrain) -> d
 
     drawn = []
     for sector in tower.sectors:
-        half = 0.5 * min(patterns[sector.id].azimuth_beamwidth_deg, 360.0)
-        steps = max(2, math.ceil(2.0 * half / _ARC_STEP_DEG) + 1)
-        arc = np.linspace(sector.azimuth_deg - half, sector.azimuth_deg + half, steps)
+        left_deg, right_deg = half_power_edges_deg(patterns[sector.id])
+        width = right_deg - left_deg
+        steps = max(2, math.ceil(width / _ARC_STEP_DEG) + 1)
+        arc = sector.azimuth_deg + np.linspace(left_deg, right_deg, steps)
         centre = _place(tower.latitude, tower.longitude)
-        edges = [] if half >= 180.0 else [arc[0], arc[-1]]
+        edges = [] if width >= 360.0 else [arc[0], arc[-1]]
         drawn.append(
             {
                 "rays": [[centre, at(float(edge), radius_m)] for edge in edges],
@@ -229,7 +238,7 @@ def _tower(tower: Tower, patterns: Mapping[str, Pattern], terrain: Terrain) -> d
                 ],
                 "lines": [
                     sector.id,
-                    f"azimuth {sector.azimuth_deg:03.0f}° T, half-power width {2.0 * half:.0f}°",
+                    f"azimuth {sector.azimuth_deg:03.0f}° T, half-power width {width:.0f}°",
                     f"downtilt {sector.mechanical_downtilt_deg:g}° mechanical, "
                     f"{sector.electrical_downtilt_deg:g}° electrical",
                     f"antenna {sector.antenna_height_m:g} m above ground, "
@@ -255,6 +264,9 @@ def _customer(answer: CustomerAnswer) -> dict[str, Any]:
             f"{answer.elevation_angle_deg:+.1f}°",
             f"{sight}, antenna {answer.antenna_height_m:g} m",
         ]
+    lines = [
+        line.replace("-", "\u2212") if "dBm" in line or "°" in line else line for line in lines
+    ]
     return {
         "id": customer.id,
         "address": customer.address,

@@ -7,7 +7,7 @@ import numpy as np
 
 from planner import __version__
 from planner.coverage import Coverage
-from planner.handout.colours import sector_colours
+from planner.handout.colours import rgb, sector_colours
 from planner.io.geotiff import write_layer
 from planner.network import Sector
 from planner.plan.read import Plan
@@ -55,10 +55,10 @@ def write_coverage_layers(
         )
         written.append("received_signal.tif")
     if "best_server" in plan.layers:
+        hues = sector_colours(coverage.best_server, len(sectors))
         colours = {0: (0, 0, 0, 0)}
-        for number, colour in enumerate(sector_colours(len(sectors)), start=1):
-            red, green, blue = (int(colour[i : i + 2], 16) for i in (1, 3, 5))
-            colours[number] = (red, green, blue, 255)
+        for number, colour in enumerate(hues, start=1):
+            colours[number] = (*rgb(colour), 255)
         write_layer(
             folder / "best_server.tif",
             coverage.best_server,

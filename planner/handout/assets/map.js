@@ -40,7 +40,7 @@ document.addEventListener("DOMContentLoaded", function () {
   data.towers.forEach((tower) => {
     const lines = [tower.id];
     tower.sectors.forEach((sector) => {
-      const thin = { color: INK, weight: 1, interactive: false };
+      const thin = { color: INK, weight: 1, interactive: false, smoothFactor: 0 };
       sector.rays.forEach((ray) => L.polyline(ray, thin).addTo(map));
       L.polyline(sector.arc, thin).addTo(map);
       L.polyline(sector.tick, { color: INK, weight: 3.5, interactive: false }).addTo(map);
@@ -185,7 +185,7 @@ document.addEventListener("DOMContentLoaded", function () {
       text = (v.signal === 1 ? "at most " : "") + minus(dbm.toFixed(1)) + " dBm, " +
         (v.server > 0 ? data.sectors[v.server - 1].id : "below threshold");
       if (v.margin > 0 && v.server > 0) {
-        text += "\n" + ((v.margin - 1) * data.signal_step_db).toFixed(1) + " dB over the second best";
+        text += "\n" + minus((data.margin_floor_db + (v.margin - 1) * data.signal_step_db).toFixed(1)) + " dB over the second best";
       }
     } else if (v && v.status >= 2) { text = "no data"; } else if (v) { text = "out of range"; }
     output.textContent = text + "\n" + at;
