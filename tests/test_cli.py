@@ -113,6 +113,20 @@ def test_out_overrides_the_plan_s_folder(field, monkeypatch, capsys):
     assert not (field / "out").exists()
 
 
+def test_results_never_replace_an_input(field, monkeypatch, capsys):
+    """--out pointing at the folder of a raster that is named like a layer is refused."""
+    (field / "terrain.tif").rename(field / "received_signal.tif")
+    spoil(field, "terrain.tif", "received_signal.tif")
+    before = (field / "received_signal.tif").read_bytes()
+    code, _, err = planner(
+        monkeypatch, capsys, "run", field / "plan.toml", "--out", field, "--quiet"
+    )
+    assert code == 1
+    assert "received_signal.tif: found an input that a result would overwrite" in err
+    assert (field / "received_signal.tif").read_bytes() == before
+    assert not (field / "map.html").exists()
+
+
 def test_a_sector_above_its_eirp_limit_is_said_loudly_and_ends_with_3(field, monkeypatch, capsys):
     """All outputs are written; stderr names sector, EIRP and limit."""
     spoil(field, "eirp_limit_dbm = 36", "eirp_limit_dbm = 30")

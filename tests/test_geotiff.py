@@ -1,12 +1,12 @@
 """Layers as GeoTIFF: read back by rasterio and by GDAL's own tool, same bytes, no half files."""
 
-import shutil
 import subprocess
 
 import numpy as np
 import pytest
 import rasterio
 from affine import Affine
+from browser import needed_program
 from pyproj import CRS
 
 from planner.errors import OutputError
@@ -231,8 +231,7 @@ def test_replaced_makes_the_folder_and_cleans_up(tmp_path):
 @pytest.mark.gdal
 def test_gdalinfo_shows_classes_colours_and_units(tmp_path):
     """GDAL's own tool, as installed on the machine, shows what a GIS will show."""
-    if shutil.which("gdalinfo") is None:
-        pytest.skip("gdalinfo is not on this machine (Debian package gdal-bin)")
+    needed_program("gdalinfo")
     _write_servers(tmp_path / "servers.tif")
     _write_signal(tmp_path / "signal.tif")
 
