@@ -6,6 +6,7 @@ from typing import Any
 from numpy.typing import ArrayLike
 
 from planner.physics._jit import over_arrays, scalar
+from planner.physics.elementary import log10
 from planner.units import SPEED_OF_LIGHT_M_S
 
 
@@ -18,7 +19,7 @@ def wavelength_m_scalar(frequency_mhz: float) -> float:
 def free_space_loss_db_scalar(distance_m: float, frequency_mhz: float) -> float:
     if not distance_m > 0.0:
         return math.nan
-    return 20.0 * math.log10(4.0 * math.pi * distance_m / wavelength_m_scalar(frequency_mhz))
+    return 20.0 * log10(4.0 * math.pi * distance_m / wavelength_m_scalar(frequency_mhz))
 
 
 _free_space_loss_db = over_arrays(free_space_loss_db_scalar)

@@ -1,0 +1,124 @@
+"""Logarithm, exponential and arctangent that the compiler can turn into vector instructions.
+
+A call into the mathematics library stops a loop from being vectorised, and a path field takes
+three of these functions for each of tens of millions of cells. They are built from multiplications
+and from the bits of a float64 (IEEE 754-2019, table 3.5: 52 bits of fraction, exponent bias 1023).
+Tests hold them to the library's values: within 4e-12 of 1 in relative terms.
+"""
+
+import math
+from typing import Any
+
+from llvmlite import ir
+from numba import types
+from numba.extending import intrinsic
+
+from planner.physics._jit import scalar
+
+_LN_2 = 0.6931471805599453
+_LOG10_E = 0.4342944819032518
+_FRACTION_BITS = 52
+_BIAS = 1023
+_BITS_OF_HALF_ROOT_2 = 0x3FE6A09E667F3BCD  # sqrt(1/2): mantissas are taken from there to sqrt(2)
+
+
+@intrinsic
+def _bits(typing_context: Any, value: Any) -> Any:
+    """The bits of a float64 as an int64."""
+
+    def generate(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        return builder.bitcast(arguments[0], ir.IntType(64))
+
+    return types.int64(types.float64), generate
+
+
+@intrinsic
+def _from_bits(typing_context: Any, bits: Any) -> Any:
+    """The float64 that has these bits."""
+
+    def generate(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
+        return builder.bitcast(arguments[0], ir.DoubleType())
+
+    return types.float64(types.int64), generate
+
+
+@scalar
+def log10(x: float) -> float:
+    """Decimal logarithm of a normal number above 0; NaN and infinity give themselves.
+
+    Zero, negative and denormal numbers give no meaningful value.
+
+    ln m = 2 artanh((m - 1) / (m + 1)), as a series in the mantissa m, plus the exponent's share.
+    """
+    bits = _bits(x)
+    exponent = (bits - _BITS_OF_HALF_ROOT_2) >> _FRACTION_BITS
+    mantissa = _from_bits(bits - (exponent << _FRACTION_BITS))
+    s = (mantissa - 1.0) / (mantissa + 1.0)
+    z = s * s
+    series = 1.0 / 15.0
+    series = series * z + 1.0 / 13.0
+    series = series * z + 1.0 / 11.0
+    series = series * z + 1.0 / 9.0
+    series = series * z + 1.0 / 7.0
+    series = series * z + 1.0 / 5.0
+    series = series * z + 1.0 / 3.0
+    series = series * z + 1.0
+    logarithm = (2.0 * s * series + exponent * _LN_2) * _LOG10_E
+    return logarithm if x < math.inf else x
+
+
+@scalar
+def exp(x: float) -> float:
+    """e to the power x, for -700 <= x <= 700; outside it is that of the nearer bound; NaN gives NaN.
+
+    A power of two times the exponential series within half a step.
+    """
+    bounded = min(max(x, -700.0), 700.0) if x == x else 0.0
+    power = math.floor(bounded / _LN_2 + 0.5)
+    f = bounded - power * _LN_2
+    series = 1.0 / 3628800.0
+    series = series * f + 1.0 / 362880.0
+    series = series * f + 1.0 / 40320.0
+    series = series * f + 1.0 / 5040.0
+    series = series * f + 1.0 / 720.0
+    series = series * f + 1.0 / 120.0
+    series = series * f + 1.0 / 24.0
+    series = series * f + 1.0 / 6.0
+    series = series * f + 0.5
+    series = series * f + 1.0
+    series = series * f + 1.0
+    value = series * _from_bits((int(power) + _BIAS) << _FRACTION_BITS)
+    return value if x == x else x
+
+
+@scalar
+def arctangent(x: float) -> float:
+    """Angle in radians, -pi/2 to pi/2, whose tangent is x; NaN gives NaN.
+
+    Reduced to the first eighth of a turn's half: atan x = pi/2 - atan 1/x and
+    atan x = pi/4 + atan((x - 1) / (x + 1)); there the series in x converges fast.
+    """
+    size = abs(x)
+    steep = size > 1.0
+    u = 1.0 / size if steep else size
+    upper = u > math.sqrt(2.0) - 1.0
+    v = (u - 1.0) / (u + 1.0) if upper else u
+    z = v * v
+    series = 1.0 / 29.0
+    series = 1.0 / 27.0 - series * z
+    series = 1.0 / 25.0 - series * z
+    series = 1.0 / 23.0 - series * z
+    series = 1.0 / 21.0 - series * z
+    series = 1.0 / 19.0 - series * z
+    series = 1.0 / 17.0 - series * z
+    series = 1.0 / 15.0 - series * z
+    series = 1.0 / 13.0 - series * z
+    series = 1.0 / 11.0 - series * z
+    series = 1.0 / 9.0 - series * z
+    series = 1.0 / 7.0 - series * z
+    series = 1.0 / 5.0 - series * z
+    series = 1.0 / 3.0 - series * z
+    series = 1.0 - series * z
+    angle = v * series + (0.25 * math.pi if upper else 0.0)
+    angle = 0.5 * math.pi - angle if steep else angle
+    return math.copysign(angle, x)
