@@ -11,7 +11,9 @@ from planner.physics.elementary import arctangent, exp, log10
 def test_log10_is_the_library_s():
     """Over all magnitudes that distances and losses take, and close to 1, where digits are lost."""
     rng = np.random.default_rng(1)
-    for x in np.concatenate([10.0 ** rng.uniform(-12, 12, 4000), 1.0 + rng.uniform(-0.3, 0.5, 500)]):
+    for x in np.concatenate(
+        [10.0 ** rng.uniform(-12, 12, 4000), 1.0 + rng.uniform(-0.3, 0.5, 500)]
+    ):
         assert log10(x) == pytest.approx(math.log10(x), rel=4e-12, abs=1e-15)
     assert log10(1.0) == 0.0
     assert math.isnan(log10(math.nan))

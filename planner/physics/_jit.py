@@ -12,6 +12,11 @@ from numba import njit
 from numba import vectorize as numba_vectorize
 
 scalar = njit(cache=True, error_model="numpy", nogil=True)
+# Short formulas that stand in the loops of a kernel: a call would keep a loop from vector code.
+formula = njit(cache=True, error_model="numpy", nogil=True, forceinline=True)
+# Pasted into its callers before anything is compiled: for pieces of a kernel that have one caller,
+# and for those whose arguments must be constants to the compiler.
+pasted = njit(cache=True, error_model="numpy", nogil=True, inline="always")
 parallel = njit(cache=True, error_model="numpy", nogil=True, parallel=True)
 
 

@@ -13,7 +13,7 @@ from llvmlite import ir
 from numba import types
 from numba.extending import intrinsic
 
-from planner.physics._jit import scalar
+from planner.physics._jit import formula
 
 _LN_2 = 0.6931471805599453
 _LOG10_E = 0.4342944819032518
@@ -42,7 +42,7 @@ def _from_bits(typing_context: Any, bits: Any) -> Any:
     return types.float64(types.int64), generate
 
 
-@scalar
+@formula
 def log10(x: float) -> float:
     """Decimal logarithm of a normal number above 0; NaN and infinity give themselves.
 
@@ -67,14 +67,14 @@ def log10(x: float) -> float:
     return logarithm if x < math.inf else x
 
 
-@scalar
+@formula
 def exp(x: float) -> float:
-    """e to the power x, for -700 <= x <= 700; outside it is that of the nearer bound; NaN gives NaN.
+    """e to the power x, for -700 <= x <= 700; outside it is that of the nearer bound.
 
-    A power of two times the exponential series within half a step.
+    NaN gives NaN. A power of two times the exponential series within half a step.
     """
     bounded = min(max(x, -700.0), 700.0) if x == x else 0.0
-    power = math.floor(bounded / _LN_2 + 0.5)
+    power = int(bounded / _LN_2 + (_BIAS + 0.5)) - _BIAS  # rounded, by truncating what is above 0
     f = bounded - power * _LN_2
     series = 1.0 / 3628800.0
     series = series * f + 1.0 / 362880.0
@@ -87,11 +87,11 @@ def exp(x: float) -> float:
     series = series * f + 0.5
     series = series * f + 1.0
     series = series * f + 1.0
-    value = series * _from_bits((int(power) + _BIAS) << _FRACTION_BITS)
+    value = series * _from_bits((power + _BIAS) << _FRACTION_BITS)
     return value if x == x else x
 
 
-@scalar
+@formula
 def arctangent(x: float) -> float:
     """Angle in radians, -pi/2 to pi/2, whose tangent is x; NaN gives NaN.
 
@@ -121,4 +121,4 @@ def arctangent(x: float) -> float:
     series = 1.0 - series * z
     angle = v * series + (0.25 * math.pi if upper else 0.0)
     angle = 0.5 * math.pi - angle if steep else angle
-    return math.copysign(angle, x)
+    return -angle if x < 0.0 else angle

@@ -8,10 +8,10 @@ import math
 
 from numpy.typing import NDArray
 
-from planner.physics._jit import scalar
+from planner.physics._jit import formula, scalar
 
 
-@scalar
+@formula
 def fit_increments(
     distance_m: float, height_m: float, previous_distance_m: float, previous_height_m: float
 ) -> tuple[float, float]:
@@ -25,7 +25,7 @@ def fit_increments(
     return v1, v2
 
 
-@scalar
+@formula
 def smooth_surface_ends(
     v1: float,
     v2: float,

@@ -7,11 +7,15 @@ Section and equation numbers are from memory; tests hold the results to publishe
 
 import math
 
-from planner.physics._jit import scalar
+from planner.physics._jit import formula, scalar
 
 # Electrical constants of the ground, ITU-R P.1812-7 section 4.3.3 (relative permittivity, S/m).
 LAND_PERMITTIVITY, LAND_CONDUCTIVITY_S_M = 22.0, 0.003
 SEA_PERMITTIVITY, SEA_CONDUCTIVITY_S_M = 80.0, 5.0
+
+# Clearance without loss over sqrt(wavelength d1 d2 / d), all in metres: 0.552 of a Fresnel radius.
+# P.526-15 section 3.2 gives 17.456 with distances in km.
+REQUIRED_CLEARANCE = 17.456 / math.sqrt(1000.0)
 
 
 @scalar
@@ -160,7 +164,7 @@ def spherical_earth_loss_db_scalar(
     )
     d1 = point_m / 1000.0
     d2 = d - d1
-    required = 17.456 * math.sqrt(d1 * d2 * wavelength_m / d)
+    required = REQUIRED_CLEARANCE * math.sqrt(1000.0 * d1 * d2 * wavelength_m / d)
     if clearance > required:
         return 0.0
     # A smaller earth whose horizon is just at this distance.
@@ -171,3 +175,23 @@ def spherical_earth_loss_db_scalar(
     if loss < 0.0:
         return 0.0
     return (1.0 - clearance / required) * loss
+
+
+@formula
+def clears_sphere_scalar(
+    distance_m: float,
+    tx_height_m: float,
+    rx_height_m: float,
+    earth_radius_m: float,
+    wavelength_m: float,
+) -> bool:
+    """Whether the loss over a smooth sphere is 0 by a bound that costs little; False: not known.
+
+    With u = d1 / d the clearance is h1 (1 - u) + h2 u - d^2 u (1 - u) / (2 a), of which the first
+    two are at least 2 sqrt(h1 h2 u (1 - u)), and the clearance required is a constant times
+    sqrt(u (1 - u)). Divided by that root, the difference is least halfway, where u (1 - u) = 1/4.
+    Own derivation from P.526-15 section 3.2.
+    """
+    required = REQUIRED_CLEARANCE * math.sqrt(distance_m * wavelength_m)
+    least = 2.0 * math.sqrt(tx_height_m * rx_height_m)
+    return least - distance_m * distance_m / (4.0 * earth_radius_m) > required

@@ -12,13 +12,22 @@ from planner.errors import Problem, TerrainError
 from planner.geodesy import LocalFrame, local_frame
 from planner.physics.diffraction import Polarization
 from planner.physics.free_space import free_space_loss_db_scalar, wavelength_m_scalar
-from planner.sweep.radial import sweep_radials
-from planner.sweep.state import COMPUTED, LEAST_DISTANCE_M, NO_DATA, OUT_OF_RANGE, Link, Mast
+from planner.sweep.state import (
+    COMPUTED,
+    LEAST_DISTANCE_M,
+    NO_DATA,
+    OUT_OF_RANGE,
+    Layers,
+    Link,
+    Mast,
+)
+from planner.sweep.walk import fans, walk_fans
 from planner.terrain import Terrain
 from planner.units import EARTH_RADIUS_KM
 
 Progress = Callable[[int, int], None]  # done, total
 
+_SNAP_CELLS = 1e-6  # a mast so near a cell's centre stands on it
 _PORTIONS = 40  # the sweep reports progress, and can be interrupted, this many times
 
 
@@ -42,6 +51,7 @@ class PathField:
     radius_m: float
     path_loss_db: NDArray[np.float32]  # NaN where not computed
     departure_elevation_deg: NDArray[np.float32]  # towards the cell, or the horizon if obstructed
+    fresnel_clearance_ratio: NDArray[np.float32]  # worst on the way, in first Fresnel radii; <= 1
     status: NDArray[np.uint8]  # COMPUTED, OUT_OF_RANGE, NO_DATA or CROSSES_HOLE
 
     def departure_azimuth_deg(self) -> NDArray[np.float32]:
@@ -99,6 +109,8 @@ def path_field(
     grid = terrain.grid
     easting, northing = (float(v) for v in grid.from_geographic(latitude, longitude))
     row, col = (float(v) for v in grid.row_col(easting, northing))
+    # Coordinates that were computed from a cell's centre come back to within rounding of it.
+    row, col = (round(v) if abs(v - round(v)) < _SNAP_CELLS else v for v in (row, col))
     place = f"mast at latitude {latitude:.5f}, longitude {longitude:.5f}"
     if not grid.contains(row, col):
         raise TerrainError(Problem(where=place, found="a place outside the terrain"))
@@ -120,8 +132,8 @@ def path_field(
         obstacle = np.zeros((0, 0), dtype=np.float32)
         obstacle.flags.writeable = False  # so that the kernel is compiled for one type only
     mast = Mast(
-        row=row,
-        col=col,
+        row=float(row),
+        col=float(col),
         row_start=row_start,
         col_start=col_start,
         cell_m=grid.cell_m,
@@ -140,27 +152,28 @@ def path_field(
         radius_m=float(radius_m),
         obstacle_clearing_m=float(obstacle_clearing_m),
     )
-    path_loss = np.full(shape, np.nan, dtype=np.float32)
-    elevation = np.full(shape, np.nan, dtype=np.float32)
-    status = np.full(shape, OUT_OF_RANGE, dtype=np.uint8)
-    radials = 4 * (2 * reach + 1)
-    edges = np.linspace(0, radials, _PORTIONS + 1).astype(int)
+    layers = Layers(
+        path_loss_db=np.full(shape, np.nan, dtype=np.float32),
+        departure_elevation_deg=np.full(shape, np.nan, dtype=np.float32),
+        fresnel_clearance_ratio=np.full(shape, np.nan, dtype=np.float32),
+        status=np.full(shape, OUT_OF_RANGE, dtype=np.uint8),
+    )
+    units = fans(reach)
+    edges = np.linspace(0, len(units), _PORTIONS + 1).astype(int)
     for portion, (first, stop) in enumerate(pairwise(edges)):
         if progress is not None:
             progress(portion, _PORTIONS)
-        sweep_radials(
-            int(first), int(stop), reach, ground, obstacle, mast, link, path_loss, elevation, status
-        )
+        walk_fans(units[first:stop], ground, obstacle, mast, link, layers)
     if progress is not None:
         progress(_PORTIONS, _PORTIONS)
-    _compute_own_cell(mast, link, ground, path_loss, elevation, status)
-    for array in (path_loss, elevation, status):
+    _compute_own_cell(mast, link, ground, layers)
+    for array in layers:
         array.flags.writeable = False
     return PathField(
         row_start=row_start,
         col_start=col_start,
-        mast_row=row,
-        mast_col=col,
+        mast_row=float(row),
+        mast_col=float(col),
         mast_ground_m=ground_m,
         frame=frame,
         cell_m=grid.cell_m,
@@ -168,20 +181,14 @@ def path_field(
         antenna_height_m=float(antenna_height_m),
         receiver_height_m=float(receiver_height_m),
         radius_m=float(radius_m),
-        path_loss_db=path_loss,
-        departure_elevation_deg=elevation,
-        status=status,
+        path_loss_db=layers.path_loss_db,
+        departure_elevation_deg=layers.departure_elevation_deg,
+        fresnel_clearance_ratio=layers.fresnel_clearance_ratio,
+        status=layers.status,
     )
 
 
-def _compute_own_cell(
-    mast: Mast,
-    link: Link,
-    ground: NDArray[np.float32],
-    path_loss: NDArray[np.float32],
-    elevation: NDArray[np.float32],
-    status: NDArray[np.uint8],
-) -> None:
+def _compute_own_cell(mast: Mast, link: Link, ground: NDArray[np.float32], layers: Layers) -> None:
     """A mast on the very centre of a cell: no radial owns that cell, straight down is its path."""
     row, col = int(mast.row), int(mast.col)
     if row != mast.row or col != mast.col:
@@ -189,8 +196,9 @@ def _compute_own_cell(
     out = (row - mast.row_start, col - mast.col_start)
     rise = float(ground[row, col]) + link.receiver_height_m - link.tx_height_m
     if not abs(rise) >= LEAST_DISTANCE_M:
-        status[out] = NO_DATA
+        layers.status[out] = NO_DATA
         return
-    path_loss[out] = free_space_loss_db_scalar(abs(rise), link.frequency_mhz)
-    elevation[out] = math.copysign(90.0, rise)
-    status[out] = COMPUTED
+    layers.path_loss_db[out] = free_space_loss_db_scalar(abs(rise), link.frequency_mhz)
+    layers.departure_elevation_deg[out] = math.copysign(90.0, rise)
+    layers.fresnel_clearance_ratio[out] = 1.0
+    layers.status[out] = COMPUTED

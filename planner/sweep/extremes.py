@@ -1,0 +1,198 @@
+"""The extreme points of all profiles of a fan, found without looking at every sample.
+
+Two things are sought among the samples before a cell: the one that is steepest seen from the
+receiver (where the ray is blocked), and the one with the largest Fresnel-Kirchhoff parameter nu.
+Both are of the form (height - line) * weight, where the weight depends on the sample's place only,
+so all lanes share it. With u steps from mast to cell, sample i at step i + 1 and k = u - i - 1,
+
+    tangent:  (height - receiver) / k                          slope per step
+    nu:       (height - slope * (i + 1)) / sqrt((i + 1) * k)   times sqrt(2 u^2 / (wavelength * d))
+
+A block of samples cannot beat what was found already where its highest point, put where it counts
+most within the block, does not: most blocks are passed over, and the result is the same.
+"""
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.physics._jit import scalar
+from planner.sweep.state import (
+    BEST_NEAR,
+    BEST_TANGENT,
+    BLOCK,
+    DIRECT,
+    RECALLED,
+    RX_BENT,
+    SUPER_BLOCKS,
+)
+
+f4 = np.float32
+
+
+@scalar
+def scan(
+    narrow: NDArray,
+    surface: NDArray,
+    root: NDArray,
+    lanes: int,
+    low: int,
+    high: int,
+    steps: float,
+) -> None:
+    """Let the samples from ``low`` up to ``high`` compete."""
+    for i in range(low, high):
+        steepness = f4(1.0 / (steps - (i + 1.0)))
+        weight = root[i] * f4(math.sqrt(steepness))
+        place = f4(i + 1.0)
+        for lane in range(lanes):
+            height = surface[i, lane]
+            tangent = (height - narrow[RX_BENT + lane]) * steepness
+            near = (height - narrow[DIRECT + lane] * place) * weight
+            narrow[BEST_TANGENT + lane] = max(tangent, narrow[BEST_TANGENT + lane])
+            narrow[BEST_NEAR + lane] = max(near, narrow[BEST_NEAR + lane])
+
+
+@scalar
+def scan_block(
+    narrow: NDArray, surface: NDArray, root: NDArray, lanes: int, low: int, steps: float
+) -> bool:
+    """The same for a whole block, four samples at a time; whether any lane found a better one."""
+    rose = False
+    for i in range(low, low + BLOCK, 4):
+        s0 = f4(1.0 / (steps - (i + 1.0)))
+        s1 = f4(1.0 / (steps - (i + 2.0)))
+        s2 = f4(1.0 / (steps - (i + 3.0)))
+        s3 = f4(1.0 / (steps - (i + 4.0)))
+        w0 = root[i] * f4(math.sqrt(s0))
+        w1 = root[i + 1] * f4(math.sqrt(s1))
+        w2 = root[i + 2] * f4(math.sqrt(s2))
+        w3 = root[i + 3] * f4(math.sqrt(s3))
+        p0, p1, p2, p3 = f4(i + 1.0), f4(i + 2.0), f4(i + 3.0), f4(i + 4.0)
+        for lane in range(lanes):
+            h0 = surface[i, lane]
+            h1 = surface[i + 1, lane]
+            h2 = surface[i + 2, lane]
+            h3 = surface[i + 3, lane]
+            rx = narrow[RX_BENT + lane]
+            slope = narrow[DIRECT + lane]
+            tangent = max(max((h0 - rx) * s0, (h1 - rx) * s1), max((h2 - rx) * s2, (h3 - rx) * s3))
+            near = max(
+                max((h0 - slope * p0) * w0, (h1 - slope * p1) * w1),
+                max((h2 - slope * p2) * w2, (h3 - slope * p3) * w3),
+            )
+            best_tangent = narrow[BEST_TANGENT + lane]
+            best_near = narrow[BEST_NEAR + lane]
+            rose = rose | (tangent > best_tangent) | (near > best_near)
+            narrow[BEST_TANGENT + lane] = max(tangent, best_tangent)
+            narrow[BEST_NEAR + lane] = max(near, best_near)
+    return rose
+
+
+@scalar
+def weigh_edges(
+    steepness: NDArray, weight: NDArray, root: NDArray, blocks: int, steps: float
+) -> None:
+    """Weights at the first sample of each block and of the one after the last."""
+    for block in range(blocks + 1):
+        steepness[block] = f4(1.0) / f4(steps - (block * BLOCK + 1.0))
+    for block in range(blocks + 1):
+        weight[block] = root[block * BLOCK] * np.sqrt(steepness[block])
+
+
+@scalar
+def may_hold_better(
+    narrow: NDArray,
+    top: NDArray,
+    steepness: NDArray,
+    weight: NDArray,
+    lanes: int,
+    row: int,
+    first: int,
+    stop: int,
+    steps: float,
+) -> bool:
+    """Whether blocks ``first`` up to ``stop``, of highest points top[row], may beat a lane's best.
+
+    A height above the line counts most where the weight is largest, one below where it is
+    smallest; the weight of nu is smallest halfway between the ends of the path.
+    """
+    far, close = steepness[first], steepness[stop]
+    one, other = weight[first], weight[stop]
+    heavy, light = max(one, other), min(one, other)
+    first_step, last_step = first * BLOCK + 1.0, stop * BLOCK + 1.0
+    if first_step < 0.5 * steps < last_step:
+        light = f4(2.0 / steps)
+    from_step, to_step = f4(first_step), f4(last_step)
+    hit = False
+    for lane in range(lanes):
+        height = top[row, lane]
+        above = height - narrow[RX_BENT + lane]
+        tangent = max(above * far, above * close)
+        slope = narrow[DIRECT + lane]
+        clear = height - min(slope * from_step, slope * to_step)
+        near = max(clear * heavy, clear * light)
+        hit = hit | (tangent > narrow[BEST_TANGENT + lane]) | (near > narrow[BEST_NEAR + lane])
+    return hit
+
+
+@scalar
+def search(
+    narrow: NDArray,
+    surface: NDArray,
+    block_top: NDArray,
+    super_top: NDArray,
+    steepness: NDArray,
+    weight: NDArray,
+    root: NDArray,
+    recalled: NDArray,
+    lanes: int,
+    samples: int,
+    steps: float,
+) -> None:
+    """Let all samples below ``samples`` compete for BEST_TANGENT and BEST_NEAR of each lane.
+
+    Blocks that held an extreme at the line before come first: they mostly still do, and with a
+    good best the others are passed over.
+    """
+    blocks = samples // BLOCK
+    known = recalled[0]
+    kept = 0
+    for n in range(known):
+        block = recalled[1 + n]
+        recalled[1 + RECALLED + n] = block
+        if scan_block(narrow, surface, root, lanes, block * BLOCK, steps):
+            recalled[1 + kept] = block
+            kept += 1
+    scan(narrow, surface, root, lanes, blocks * BLOCK, samples, steps)
+    weigh_edges(steepness, weight, root, blocks, steps)
+    grouped = blocks // SUPER_BLOCKS * SUPER_BLOCKS
+    block = blocks - 1
+    while block >= 0:
+        if block < grouped and block % SUPER_BLOCKS == SUPER_BLOCKS - 1:
+            group = block // SUPER_BLOCKS
+            first = group * SUPER_BLOCKS
+            if not may_hold_better(
+                narrow, super_top, steepness, weight, lanes, group, first, block + 1, steps
+            ):
+                block -= SUPER_BLOCKS
+                continue
+        seen = False
+        for n in range(known):
+            seen = seen | (recalled[1 + RECALLED + n] == block)
+        if (
+            not seen
+            and may_hold_better(
+                narrow, block_top, steepness, weight, lanes, block, block, block + 1, steps
+            )
+            and scan_block(narrow, surface, root, lanes, block * BLOCK, steps)
+        ):
+            if kept == RECALLED:
+                for n in range(1, RECALLED):
+                    recalled[n] = recalled[n + 1]
+                kept -= 1
+            kept += 1
+            recalled[kept] = block
+        block -= 1
+    recalled[0] = kept

@@ -1,0 +1,240 @@
+"""Terrain under a fan: where its radials cross the lines of cells, and samples a step apart."""
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from planner.physics._jit import pasted, scalar
+from planner.sweep.state import (
+    BLOCK,
+    BULGE,
+    BULGE_DRIFT,
+    CROSSING,
+    EDGE,
+    EDGE_STEP,
+    FIXED,
+    FRACTION,
+    GROUND_SLOPE,
+    HOLES,
+    INDEX,
+    LAST_CROSSING,
+    LAST_GROUND,
+    LAST_WOOD,
+    LOWER,
+    MOMENT,
+    SUM,
+    SUPER_BLOCKS,
+    SURFACE_SLOPE,
+    UPPER,
+    WOOD,
+    Link,
+    Mast,
+    Wedge,
+)
+
+f4 = np.float32
+
+
+@scalar
+def start_fan(
+    narrow: NDArray,
+    place: NDArray,
+    lanes: int,
+    first_radial: int,
+    half_count: int,
+    wedge: Wedge,
+    mast: Mast,
+    link: Link,
+) -> None:
+    """Set up the lanes ``first_radial`` and following, of the radials -half_count to half_count.
+
+    Radial r crosses the line at distance t (in cells) at r / half_count * t beside the mast.
+    """
+    for edge in range(lanes + 1):
+        slope = (2.0 * (first_radial + edge) - 1.0) / (2.0 * half_count)
+        place[EDGE + edge] = math.floor((wedge.side + slope * wedge.first_t) * FIXED + 0.5)
+        place[EDGE_STEP + edge] = math.floor(slope * FIXED + 0.5)
+    east, north = 0.0, 0.0
+    for lane in range(lanes):
+        slope = (first_radial + lane) / half_count
+        if wedge.along_rows:
+            east, north = wedge.forward * mast.cell_m, -slope * mast.cell_m
+        else:
+            east, north = slope * mast.cell_m, -wedge.forward * mast.cell_m
+        stretch_m = math.sqrt(1.0 + slope * slope) * mast.cell_m / mast.scale
+        drift = (
+            0.5
+            * (mast.scale_gradient_east_per_m * east + mast.scale_gradient_north_per_m * north)
+            / mast.scale
+        )
+        narrow[BULGE + lane] = stretch_m * stretch_m / (2.0 * link.earth_radius_m)
+        narrow[BULGE_DRIFT + lane] = 2.0 * drift
+        narrow[LAST_CROSSING + lane] = mast.ground_m - link.tx_height_m
+        narrow[LAST_WOOD + lane] = 0.0
+        narrow[LAST_GROUND + lane] = mast.ground_m - link.tx_height_m
+        narrow[SURFACE_SLOPE + lane] = -np.inf
+        narrow[GROUND_SLOPE + lane] = -np.inf
+        narrow[SUM + lane] = 0.0
+        narrow[MOMENT + lane] = 0.0
+        narrow[HOLES + lane] = 0.0
+
+
+@pasted
+def crossing(
+    narrow: NDArray,
+    place: NDArray,
+    lanes: int,
+    raster: NDArray,
+    wedge: Wedge,
+    line: int,
+    below: float,
+    out: int,
+) -> None:
+    """Raster values less ``below`` at the places INDEX + FRACTION of a line, into ``out``.
+
+    A cell without weight may be a hole.
+    """
+    last = wedge.lateral_last
+    if wedge.along_rows:
+        for lane in range(lanes):
+            i = place[INDEX + lane]
+            narrow[LOWER + lane] = raster[i, line]
+            narrow[UPPER + lane] = raster[min(i + 1, last), line]
+    else:
+        for lane in range(lanes):
+            i = place[INDEX + lane]
+            narrow[LOWER + lane] = raster[line, i]
+            narrow[UPPER + lane] = raster[line, min(i + 1, last)]
+    base = f4(below)
+    for lane in range(lanes):
+        share = narrow[FRACTION + lane]
+        low = narrow[LOWER + lane]
+        between = low + share * (narrow[UPPER + lane] - low)
+        narrow[out + lane] = (between if share > f4(0.0) else low) - base
+
+
+@scalar
+def cross_line(
+    narrow: NDArray,
+    place: NDArray,
+    lanes: int,
+    ground: NDArray,
+    obstacle: NDArray,
+    wedge: Wedge,
+    line: int,
+    link: Link,
+) -> None:
+    """Ground and obstacles where the radials cross a line."""
+    last = wedge.lateral_last
+    for lane in range(lanes):
+        at = (place[EDGE + lane] + place[EDGE + lane + 1]) >> 1
+        i = at >> 32
+        share = f4((at >> 1) & 0x7FFFFFFF) * f4(2.0**-31)
+        inside = (i >= 0) & (i < last)
+        place[INDEX + lane] = min(max(i, 0), last)
+        narrow[FRACTION + lane] = share if inside else f4(0.0)
+    crossing(narrow, place, lanes, ground, wedge, line, link.tx_height_m, CROSSING)
+    if obstacle.size > 0:
+        crossing(narrow, place, lanes, obstacle, wedge, line, 0.0, WOOD)
+
+
+@scalar
+def next_line(narrow: NDArray, place: NDArray, lanes: int) -> None:
+    """Move on: the present crossing becomes the last, the lanes' edges shift."""
+    for lane in range(lanes):
+        narrow[LAST_CROSSING + lane] = narrow[CROSSING + lane]
+    for lane in range(lanes):
+        narrow[LAST_WOOD + lane] = narrow[WOOD + lane]
+    for edge in range(lanes + 1):
+        place[EDGE + edge] += place[EDGE_STEP + edge]
+
+
+@scalar
+def take_sample(
+    narrow: NDArray,
+    ground: NDArray,
+    surface: NDArray,
+    lanes: int,
+    sample: int,
+    share: float,
+    has_obstacles: bool,
+) -> None:
+    """Ground (and obstacles) a share of the way from the last crossing to the present one."""
+    part = f4(share)
+    for lane in range(lanes):
+        last = narrow[LAST_CROSSING + lane]
+        ground[sample, lane] = last + part * (narrow[CROSSING + lane] - last)
+    if has_obstacles:
+        for lane in range(lanes):
+            last = narrow[LAST_WOOD + lane]
+            surface[sample, lane] = last + part * (narrow[WOOD + lane] - last)
+
+
+@scalar
+def include_sample(
+    narrow: NDArray,
+    ground: NDArray,
+    surface: NDArray,
+    lanes: int,
+    sample: int,
+    t: float,
+    has_obstacles: bool,
+    clearing_bulge_m: float,
+) -> None:
+    """Bend the sample's ground and add it to what the smooth surface and the horizon need.
+
+    Obstacles do not count where the earth's bulge is below ``clearing_bulge_m``: near the mast.
+    """
+    steps = f4(sample + 1.0)
+    per_step = f4(1.0 / (sample + 1.0))
+    t1 = f4(t)
+    t2 = f4(t * t)
+    for lane in range(lanes):
+        height = ground[sample, lane]
+        bulge = t2 * (narrow[BULGE + lane] * (f4(1.0) - t1 * narrow[BULGE_DRIFT + lane]))
+        ground[sample, lane] = height - bulge
+        narrow[GROUND_SLOPE + lane] = max(height * per_step, narrow[GROUND_SLOPE + lane])
+        narrow[SUM + lane] += height
+        narrow[MOMENT + lane] += steps * height
+        narrow[LAST_GROUND + lane] = height
+        narrow[HOLES + lane] += height - height
+    if has_obstacles:
+        least = f4(clearing_bulge_m)
+        for lane in range(lanes):
+            bulge = t2 * (narrow[BULGE + lane] * (f4(1.0) - t1 * narrow[BULGE_DRIFT + lane]))
+            above = surface[sample, lane] if bulge >= least else f4(0.0)
+            surface[sample, lane] = ground[sample, lane] + above
+
+
+@scalar
+def raise_horizon(
+    narrow: NDArray,
+    surface: NDArray,
+    block_top: NDArray,
+    super_top: NDArray,
+    lanes: int,
+    sample: int,
+) -> None:
+    """Let a sample's surface count for the mast's horizon and for the blocks' highest points."""
+    per_step = f4(1.0 / (sample + 1.0))
+    for lane in range(lanes):
+        narrow[SURFACE_SLOPE + lane] = max(
+            surface[sample, lane] * per_step, narrow[SURFACE_SLOPE + lane]
+        )
+    if sample % BLOCK != BLOCK - 1:
+        return
+    block = sample // BLOCK
+    for lane in range(lanes):
+        block_top[block, lane] = surface[sample, lane]
+    for i in range(sample - BLOCK + 1, sample):
+        for lane in range(lanes):
+            block_top[block, lane] = max(surface[i, lane], block_top[block, lane])
+    if block % SUPER_BLOCKS != SUPER_BLOCKS - 1:
+        return
+    group = block // SUPER_BLOCKS
+    for lane in range(lanes):
+        super_top[group, lane] = block_top[block, lane]
+    for i in range(block - SUPER_BLOCKS + 1, block):
+        for lane in range(lanes):
+            super_top[group, lane] = max(block_top[i, lane], super_top[group, lane])
