@@ -2,15 +2,31 @@
 
 ``error_model="numpy"`` lets a division by zero give inf or NaN as numpy does; ``fastmath`` is off,
 since holes in the terrain are NaN and must stay so.
+
+Where the processor has 512-bit vectors, the compiler by default uses half their width, out of
+regard for the first processors that had them and slowed down. Measured here: whole vectors make
+the path field a third faster with two threads. Set here, since all code must be compiled alike:
+compiled code is kept on disk under the processor's features.
 """
 
 from collections.abc import Callable
 from typing import Any
 
+import llvmlite.binding
+import numba
 import numpy as np
 from numba import njit
 from numba import vectorize as numba_vectorize
 
+
+def _whole_vectors() -> None:
+    """Let the compiler use 512-bit vectors where there are any; NUMBA_CPU_FEATURES overrules."""
+    features = llvmlite.binding.get_host_cpu_features()
+    if numba.config.CPU_FEATURES is None and features.get("avx512f", False):
+        numba.config.CPU_FEATURES = f"{features.flatten()},-prefer-256-bit"
+
+
+_whole_vectors()
 scalar = njit(cache=True, error_model="numpy", nogil=True)
 # Short formulas that stand in the loops of a kernel: a call would keep a loop from vector code.
 formula = njit(cache=True, error_model="numpy", nogil=True, forceinline=True)

@@ -27,7 +27,7 @@ from planner.physics.knife_edge import knife_edge_loss_db_scalar
 def bullington_loss_db_scalar(nu: float, distance_m: float) -> float:
     """Loss of the construction from nu of its one edge: equations (52), (53) or (58), then (59)."""
     edge_loss_db = knife_edge_loss_db_scalar(nu)
-    return edge_loss_db + (1.0 - exp(-edge_loss_db / 6.0)) * (10.0 + 0.02e-3 * distance_m)
+    return edge_loss_db + (1.0 - exp(edge_loss_db * (-1.0 / 6.0))) * (10.0 + 0.02e-3 * distance_m)
 
 
 @formula

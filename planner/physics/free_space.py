@@ -19,7 +19,9 @@ def wavelength_m_scalar(frequency_mhz: float) -> float:
 def free_space_loss_db_scalar(distance_m: float, frequency_mhz: float) -> float:
     if not distance_m > 0.0:
         return math.nan
-    return 20.0 * log10(4.0 * math.pi * distance_m / wavelength_m_scalar(frequency_mhz))
+    # Two logarithms: in a loop over distances the second is taken once.
+    per_metre = 4.0 * math.pi / wavelength_m_scalar(frequency_mhz)
+    return 20.0 * log10(distance_m) + 20.0 * log10(per_metre)
 
 
 _free_space_loss_db = over_arrays(free_space_loss_db_scalar)

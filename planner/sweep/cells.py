@@ -36,14 +36,18 @@ from planner.sweep.state import (
     LEAST_DISTANCE_M,
     LOSS,
     MOMENT,
+    NEXT_INDEX,
     NO_DATA,
+    NU_SCALE,
     OWN_BENT,
     OWN_CROSSING,
     OWN_WOOD,
+    PER_METRE,
     RATIO,
     RX_BENT,
     RX_EFFECTIVE,
     SHARE,
+    SPACING,
     SPHERE,
     SUM,
     SURFACE_SLOPE,
@@ -70,6 +74,8 @@ def own_cells(
     t: float,
     wedge: Wedge,
     mast: Mast,
+    inner: int,
+    outer: int,
     radius_m: float,
 ) -> bool:
     """Find the cell of each lane on the line at distance t; whether any has one in range.
@@ -95,7 +101,9 @@ def own_cells(
         in_window = (cell >= wedge.lateral_low) & (cell <= wedge.lateral_high)
         # Cells on the diagonals belong to the wedges east and west.
         in_wedge = (abs(across) < t) | ((abs(across) == t) & wedge.along_rows)
-        wanted = has_cell & in_window & in_wedge & (distance <= radius_m)
+        square = t * t + across * across
+        in_ring = (square > inner * inner) & (square <= outer * outer)
+        wanted = has_cell & in_window & in_wedge & in_ring & (distance <= radius_m)
         place[CELL + lane] = min(max(cell, 0), wedge.lateral_last)
         wide[ACROSS + lane] = across
         wide[DISTANCE + lane] = distance
@@ -111,25 +119,25 @@ def own_lines(
     place: NDArray,
     lanes: int,
     t: float,
-    ground: NDArray,
-    obstacle: NDArray,
+    flat_ground: NDArray,
+    flat_obstacle: NDArray,
     wedge: Wedge,
     line: int,
     mast: Mast,
     link: Link,
 ) -> None:
     """Ground (and obstacles) where the cells' own lines to the mast cross the lines before."""
+    start = line * wedge.line_stride
+    stride = wedge.lateral_stride
     for lane in range(lanes):
-        i = place[CELL + lane]
-        height = ground[i, line] if wedge.along_rows else ground[line, i]
+        height = flat_ground[np.uint64(start + place[CELL + lane] * stride)]
         wide[GROUND + lane] = height
         narrow[OWN_CROSSING + lane] = height - link.tx_height_m
-    if obstacle.size > 0:
+    if flat_obstacle.size > 0:
         for lane in range(lanes):
-            i = place[CELL + lane]
-            narrow[OWN_WOOD + lane] = obstacle[i, line] if wedge.along_rows else obstacle[line, i]
-    _own_line(narrow, wide, place, lanes, t, ground, obstacle, wedge, line, mast, link, 1)
-    _own_line(narrow, wide, place, lanes, t, ground, obstacle, wedge, line, mast, link, 2)
+            narrow[OWN_WOOD + lane] = flat_obstacle[np.uint64(start + place[CELL + lane] * stride)]
+    _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 1)
+    _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 2)
 
 
 @pasted
@@ -139,8 +147,8 @@ def _own_line(
     place: NDArray,
     lanes: int,
     t: float,
-    ground: NDArray,
-    obstacle: NDArray,
+    flat_ground: NDArray,
+    flat_obstacle: NDArray,
     wedge: Wedge,
     line: int,
     mast: Mast,
@@ -159,20 +167,23 @@ def _own_line(
         at = min(max(wedge.side + part * wide[ACROSS + lane], 0.0), last)
         i = int(at)
         place[INDEX + lane] = i
+        place[NEXT_INDEX + lane] = min(i + 1, wedge.lateral_last)
         narrow[FRACTION + lane] = f4(at - i)
     back_line = line - back * wedge.forward
     crossing(
         narrow,
         place,
         lanes,
-        ground,
+        flat_ground,
         wedge,
         back_line,
         link.tx_height_m,
         OWN_CROSSING + back * LANES,
     )
-    if obstacle.size > 0:
-        crossing(narrow, place, lanes, obstacle, wedge, back_line, 0.0, OWN_WOOD + back * LANES)
+    if flat_obstacle.size > 0:
+        crossing(
+            narrow, place, lanes, flat_obstacle, wedge, back_line, 0.0, OWN_WOOD + back * LANES
+        )
 
 
 @scalar
@@ -188,7 +199,15 @@ def own_profile(
     """The ray to each cell, its own last samples, and the horizon seen from the mast."""
     bend = 1.0 / (2.0 * link.earth_radius_m)
     for lane in range(lanes):
+        across = wide[ACROSS + lane]
+        length = math.sqrt(t * t + across * across) - 1e-9
+        whole = int(length)
+        wide[SPACING + lane] = 1.0 / (whole + 1.0 if length > whole else max(whole * 1.0, 1.0))
+    for lane in range(lanes):
         distance = wide[DISTANCE + lane]
+        inverse = 1.0 / distance
+        wide[PER_METRE + lane] = steps * inverse
+        wide[NU_SCALE + lane] = steps * math.sqrt(inverse * (2.0 / link.wavelength_m))
         bulge = distance * distance * bend
         rx_bent = wide[GROUND + lane] + link.receiver_height_m - link.tx_height_m - bulge
         narrow[RX_BENT + lane] = rx_bent
@@ -218,16 +237,13 @@ def _own_sample(
     near_wood = OWN_WOOD + (q - 1) * LANES
     far_wood = OWN_WOOD + q * LANES
     lower = max(t - q, 0.0)
-    upper = t - (q - 1)
+    per_line = 1.0 / (t - (q - 1) - lower)
     for lane in range(lanes):
-        across = wide[ACROSS + lane]
         distance = wide[DISTANCE + lane]
-        length = math.sqrt(t * t + across * across) - 1e-9
-        whole = int(length)
-        intervals = whole + 1.0 if length > whole else whole * 1.0
-        exists = q < intervals
-        share = q / intervals if exists else 0.5
-        part = f4((t * (1.0 - share) - lower) / (upper - lower)) if exists else f4(0.0)
+        share = q * wide[SPACING + lane]
+        exists = share < 1.0 - 1e-9
+        share = share if exists else 0.5
+        part = f4((t * (1.0 - share) - lower) * per_line) if exists else f4(0.0)
         height = narrow[far + lane] + part * (narrow[near + lane] - narrow[far + lane])
         x = distance * (1.0 - share)
         if has_obstacles:
@@ -249,7 +265,7 @@ def _own_sample(
 
 
 @scalar
-def start_search(narrow: NDArray, wide: NDArray, lanes: int, steps: float, link: Link) -> None:
+def start_search(narrow: NDArray, wide: NDArray, lanes: int, steps: float) -> None:
     """First candidates: the own samples, and what is too far from mattering to be sought.
 
     Where the ray is free the tangent from the receiver is not needed; what is not wanted is
@@ -258,7 +274,7 @@ def start_search(narrow: NDArray, wide: NDArray, lanes: int, steps: float, link:
     for lane in range(lanes):
         blocked = narrow[TX_SLOPE + lane] >= narrow[DIRECT + lane]
         wanted = (narrow[WANTED + lane] > f4(0.0)) & (narrow[CELL_HOLES + lane] == f4(0.0))
-        least = f4(FREE / (steps * math.sqrt(2.0 / (link.wavelength_m * wide[DISTANCE + lane]))))
+        least = f4(FREE / wide[NU_SCALE + lane])
         narrow[BEST_TANGENT + lane] = f4(-np.inf) if wanted & blocked else f4(np.inf)
         narrow[BEST_NEAR + lane] = least if wanted else f4(np.inf)
     _own_candidate(narrow, lanes, steps, 0)
@@ -320,31 +336,20 @@ def losses(
     narrow: NDArray,
     wide: NDArray,
     lanes: int,
-    samples: int,
-    steps: float,
-    mast: Mast,
     link: Link,
-) -> bool:
-    """Path loss, angle and clearance of each lane's cell but for the spherical earth.
-
-    Returns whether that may add something to some cell.
-    """
+) -> None:
+    """Path loss, angle and clearance of each lane's cell but for the spherical earth."""
     bend = 1.0 / (2.0 * link.earth_radius_m)
-    tx_ground = mast.ground_m - link.tx_height_m
-    last_step = float(samples)
-    some = False
     for lane in range(lanes):
         distance = wide[DISTANCE + lane]
         ground = wide[GROUND + lane] - link.tx_height_m
         rx_height = ground + link.receiver_height_m
-        per_metre = steps / distance
+        per_metre = wide[PER_METRE + lane]
         blocked = narrow[TX_SLOPE + lane] >= narrow[DIRECT + lane]
         tx_slope = narrow[TX_SLOPE + lane] * per_metre
         rx_slope = narrow[BEST_TANGENT + lane] * per_metre
         direct = narrow[DIRECT + lane] * per_metre
-        near_nu = narrow[BEST_NEAR + lane] * (
-            steps * math.sqrt(2.0 / (link.wavelength_m * distance))
-        )
+        near_nu = narrow[BEST_NEAR + lane] * wide[NU_SCALE + lane]
         edge_nu = bullington_point_nu_scalar(
             tx_slope + distance * bend,
             rx_slope - distance * bend,
@@ -358,7 +363,23 @@ def losses(
         loss = free_space_loss_db_scalar(slant, link.frequency_mhz) + actual
         wide[LOSS + lane] = loss if slant >= LEAST_DISTANCE_M else math.nan
         wide[ELEVATION + lane] = math.degrees(arctangent(tx_slope if blocked else direct))
-        wide[RATIO + lane] = min(near_nu / FREE, 1.0)
+        wide[RATIO + lane] = min(near_nu * (1.0 / FREE), 1.0)
+
+
+@scalar
+def may_meet_sphere(
+    narrow: NDArray,
+    wide: NDArray,
+    lanes: int,
+    samples: int,
+    steps: float,
+    mast: Mast,
+    link: Link,
+) -> bool:
+    """Effective heights of each lane's path; whether the spherical earth may add to some loss."""
+    tx_ground = mast.ground_m - link.tx_height_m
+    last_step = float(samples)
+    some = False
     for lane in range(lanes):
         ground = wide[GROUND + lane] - link.tx_height_m
         last = float(narrow[LAST_GROUND + lane])

@@ -23,9 +23,11 @@ from planner.sweep.state import (
     BEST_TANGENT,
     BLOCK,
     DIRECT,
+    GROUP,
+    LANES,
     RECALLED,
+    REGION,
     RX_BENT,
-    SUPER_BLOCKS,
 )
 
 f4 = np.float32
@@ -34,33 +36,22 @@ f4 = np.float32
 @scalar
 def scan(
     narrow: NDArray,
-    surface: NDArray,
+    flat_surface: NDArray,
     root: NDArray,
     lanes: int,
     low: int,
     high: int,
     steps: float,
-) -> None:
-    """Let the samples from ``low`` up to ``high`` compete."""
-    for i in range(low, high):
-        steepness = f4(1.0 / (steps - (i + 1.0)))
-        weight = root[i] * f4(math.sqrt(steepness))
-        place = f4(i + 1.0)
-        for lane in range(lanes):
-            height = surface[i, lane]
-            tangent = (height - narrow[RX_BENT + lane]) * steepness
-            near = (height - narrow[DIRECT + lane] * place) * weight
-            narrow[BEST_TANGENT + lane] = max(tangent, narrow[BEST_TANGENT + lane])
-            narrow[BEST_NEAR + lane] = max(near, narrow[BEST_NEAR + lane])
-
-
-@scalar
-def scan_block(
-    narrow: NDArray, surface: NDArray, root: NDArray, lanes: int, low: int, steps: float
 ) -> bool:
-    """The same for a whole block, four samples at a time; whether any lane found a better one."""
+    """Let the samples from ``low`` up to ``high`` compete; whether any lane found a better one.
+
+    Four at a time, so a multiple of four. ``flat_surface`` is the surface in one dimension: with
+    one base for all four rows, indices that cannot be negative and offsets known to the compiler,
+    next to nothing is checked at run time.
+    """
     rose = False
-    for i in range(low, low + BLOCK, 4):
+    for i in range(low, high, 4):
+        at = np.uint64(i * LANES)
         s0 = f4(1.0 / (steps - (i + 1.0)))
         s1 = f4(1.0 / (steps - (i + 2.0)))
         s2 = f4(1.0 / (steps - (i + 3.0)))
@@ -71,10 +62,10 @@ def scan_block(
         w3 = root[i + 3] * f4(math.sqrt(s3))
         p0, p1, p2, p3 = f4(i + 1.0), f4(i + 2.0), f4(i + 3.0), f4(i + 4.0)
         for lane in range(lanes):
-            h0 = surface[i, lane]
-            h1 = surface[i + 1, lane]
-            h2 = surface[i + 2, lane]
-            h3 = surface[i + 3, lane]
+            h0 = flat_surface[at + np.uint64(lane)]
+            h1 = flat_surface[at + np.uint64(LANES) + np.uint64(lane)]
+            h2 = flat_surface[at + np.uint64(2 * LANES) + np.uint64(lane)]
+            h3 = flat_surface[at + np.uint64(3 * LANES) + np.uint64(lane)]
             rx = narrow[RX_BENT + lane]
             slope = narrow[DIRECT + lane]
             tangent = max(max((h0 - rx) * s0, (h1 - rx) * s1), max((h2 - rx) * s2, (h3 - rx) * s3))
@@ -88,6 +79,35 @@ def scan_block(
             narrow[BEST_TANGENT + lane] = max(tangent, best_tangent)
             narrow[BEST_NEAR + lane] = max(near, best_near)
     return rose
+
+
+@scalar
+def scan_latest(
+    narrow: NDArray,
+    surface: NDArray,
+    flat_surface: NDArray,
+    root: NDArray,
+    lanes: int,
+    low: int,
+    high: int,
+    steps: float,
+) -> None:
+    """Let the samples that fill no block compete: ``low`` (a multiple of four) up to ``high``."""
+    fours = low + (high - low) // 4 * 4
+    scan(narrow, flat_surface, root, lanes, low, fours, steps)
+    if fours < high and high >= 4:  # once more some of those that were counted already
+        scan(narrow, flat_surface, root, lanes, high - 4, high, steps)
+        return
+    for i in range(fours, high):
+        steepness = f4(1.0 / (steps - (i + 1.0)))
+        weight = root[i] * f4(math.sqrt(steepness))
+        place = f4(i + 1.0)
+        for lane in range(lanes):
+            height = surface[i, lane]
+            tangent = (height - narrow[RX_BENT + lane]) * steepness
+            near = (height - narrow[DIRECT + lane] * place) * weight
+            narrow[BEST_TANGENT + lane] = max(tangent, narrow[BEST_TANGENT + lane])
+            narrow[BEST_NEAR + lane] = max(near, narrow[BEST_NEAR + lane])
 
 
 @scalar
@@ -141,8 +161,10 @@ def may_hold_better(
 def search(
     narrow: NDArray,
     surface: NDArray,
+    flat_surface: NDArray,
     block_top: NDArray,
-    super_top: NDArray,
+    group_top: NDArray,
+    region_top: NDArray,
     steepness: NDArray,
     weight: NDArray,
     root: NDArray,
@@ -154,29 +176,39 @@ def search(
     """Let all samples below ``samples`` compete for BEST_TANGENT and BEST_NEAR of each lane.
 
     Blocks that held an extreme at the line before come first: they mostly still do, and with a
-    good best the others are passed over.
+    good best the others are passed over. Their order turns from line to line, so that one that no
+    longer holds an extreme soon comes last, raises nothing and is forgotten.
     """
     blocks = samples // BLOCK
+    scan_latest(narrow, surface, flat_surface, root, lanes, blocks * BLOCK, samples, steps)
     known = recalled[0]
     kept = 0
     for n in range(known):
-        block = recalled[1 + n]
-        recalled[1 + RECALLED + n] = block
-        if scan_block(narrow, surface, root, lanes, block * BLOCK, steps):
-            recalled[1 + kept] = block
+        recalled[1 + RECALLED + n] = recalled[known - n]
+    for n in range(known):
+        block = recalled[1 + RECALLED + n]
+        if scan(narrow, flat_surface, root, lanes, block * BLOCK, (block + 1) * BLOCK, steps):
             kept += 1
-    scan(narrow, surface, root, lanes, blocks * BLOCK, samples, steps)
+            recalled[kept] = block
     weigh_edges(steepness, weight, root, blocks, steps)
-    grouped = blocks // SUPER_BLOCKS * SUPER_BLOCKS
+    in_regions = blocks // REGION * REGION
+    in_groups = blocks // GROUP * GROUP
     block = blocks - 1
     while block >= 0:
-        if block < grouped and block % SUPER_BLOCKS == SUPER_BLOCKS - 1:
-            group = block // SUPER_BLOCKS
-            first = group * SUPER_BLOCKS
+        stop = block + 1
+        if stop <= in_regions and stop % REGION == 0:
+            first = stop - REGION
             if not may_hold_better(
-                narrow, super_top, steepness, weight, lanes, group, first, block + 1, steps
+                narrow, region_top, steepness, weight, lanes, first // REGION, first, stop, steps
             ):
-                block -= SUPER_BLOCKS
+                block -= REGION
+                continue
+        if stop <= in_groups and stop % GROUP == 0:
+            first = stop - GROUP
+            if not may_hold_better(
+                narrow, group_top, steepness, weight, lanes, first // GROUP, first, stop, steps
+            ):
+                block -= GROUP
                 continue
         seen = False
         for n in range(known):
@@ -186,7 +218,7 @@ def search(
             and may_hold_better(
                 narrow, block_top, steepness, weight, lanes, block, block, block + 1, steps
             )
-            and scan_block(narrow, surface, root, lanes, block * BLOCK, steps)
+            and scan(narrow, flat_surface, root, lanes, block * BLOCK, (block + 1) * BLOCK, steps)
         ):
             if kept == RECALLED:
                 for n in range(1, RECALLED):

@@ -2,9 +2,11 @@
 
 import math
 from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
-from itertools import pairwise
+from typing import Any
 
+import numba
 import numpy as np
 from numpy.typing import NDArray
 
@@ -21,14 +23,14 @@ from planner.sweep.state import (
     Link,
     Mast,
 )
-from planner.sweep.walk import fans, walk_fans
+from planner.sweep.walk import fans, walk_fan
 from planner.terrain import Terrain
 from planner.units import EARTH_RADIUS_KM
 
 Progress = Callable[[int, int], None]  # done, total
 
 _SNAP_CELLS = 1e-6  # a mast so near a cell's centre stands on it
-_PORTIONS = 40  # the sweep reports progress, and can be interrupted, this many times
+_REPORT_EVERY = 16  # fans; between them the sweep can be interrupted
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -158,14 +160,7 @@ def path_field(
         fresnel_clearance_ratio=np.full(shape, np.nan, dtype=np.float32),
         status=np.full(shape, OUT_OF_RANGE, dtype=np.uint8),
     )
-    units = fans(reach)
-    edges = np.linspace(0, len(units), _PORTIONS + 1).astype(int)
-    for portion, (first, stop) in enumerate(pairwise(edges)):
-        if progress is not None:
-            progress(portion, _PORTIONS)
-        walk_fans(units[first:stop], ground, obstacle, mast, link, layers)
-    if progress is not None:
-        progress(_PORTIONS, _PORTIONS)
+    _walk_all(fans(reach), (ground, obstacle, mast, link, layers), progress)
     _compute_own_cell(mast, link, ground, layers)
     for array in layers:
         array.flags.writeable = False
@@ -186,6 +181,24 @@ def path_field(
         fresnel_clearance_ratio=layers.fresnel_clearance_ratio,
         status=layers.status,
     )
+
+
+def _walk_all(
+    units: list[tuple[int, int, int, int]], shared: tuple[Any, ...], progress: Progress | None
+) -> None:
+    """Walk all fans with as many threads as numba is set to use; the kernel holds no lock."""
+    if progress is not None:
+        progress(0, len(units))
+    with ThreadPoolExecutor(numba.get_num_threads()) as pool:
+        pending = [pool.submit(walk_fan, *unit, *shared) for unit in units]
+        try:
+            for done, walked in enumerate(pending, start=1):
+                walked.result()
+                if progress is not None and (done % _REPORT_EVERY == 0 or done == len(units)):
+                    progress(done, len(units))
+        except BaseException:  # an interruption too: do not start what has not begun
+            pool.shutdown(cancel_futures=True)
+            raise
 
 
 def _compute_own_cell(mast: Mast, link: Link, ground: NDArray[np.float32], layers: Layers) -> None:

@@ -16,6 +16,7 @@ from planner.sweep.state import (
     FIXED,
     FRACTION,
     GROUND_SLOPE,
+    GROUP,
     HOLES,
     INDEX,
     LAST_CROSSING,
@@ -23,8 +24,9 @@ from planner.sweep.state import (
     LAST_WOOD,
     LOWER,
     MOMENT,
+    NEXT_INDEX,
+    REGION,
     SUM,
-    SUPER_BLOCKS,
     SURFACE_SLOPE,
     UPPER,
     WOOD,
@@ -42,22 +44,23 @@ def start_fan(
     place: NDArray,
     lanes: int,
     first_radial: int,
-    half_count: int,
+    outer: int,
     wedge: Wedge,
     mast: Mast,
     link: Link,
 ) -> None:
-    """Set up the lanes ``first_radial`` and following, of the radials -half_count to half_count.
+    """Set up the lanes of the radials ``first_radial`` and following.
 
-    Radial r crosses the line at distance t (in cells) at r / half_count * t beside the mast.
+    Radial r crosses the line at distance t (in cells) at sinh(r / outer) * t beside the mast: where
+    they reach the circle of radius ``outer`` cells all radials are a cell apart along their line.
     """
     for edge in range(lanes + 1):
-        slope = (2.0 * (first_radial + edge) - 1.0) / (2.0 * half_count)
+        slope = math.sinh((first_radial + edge - 0.5) / outer)
         place[EDGE + edge] = math.floor((wedge.side + slope * wedge.first_t) * FIXED + 0.5)
         place[EDGE_STEP + edge] = math.floor(slope * FIXED + 0.5)
     east, north = 0.0, 0.0
     for lane in range(lanes):
-        slope = (first_radial + lane) / half_count
+        slope = math.sinh((first_radial + lane) / outer)
         if wedge.along_rows:
             east, north = wedge.forward * mast.cell_m, -slope * mast.cell_m
         else:
@@ -85,7 +88,7 @@ def crossing(
     narrow: NDArray,
     place: NDArray,
     lanes: int,
-    raster: NDArray,
+    flat: NDArray,
     wedge: Wedge,
     line: int,
     below: float,
@@ -93,19 +96,14 @@ def crossing(
 ) -> None:
     """Raster values less ``below`` at the places INDEX + FRACTION of a line, into ``out``.
 
-    A cell without weight may be a hole.
+    ``flat`` is the raster in one dimension. A cell without weight may be a hole.
     """
-    last = wedge.lateral_last
-    if wedge.along_rows:
-        for lane in range(lanes):
-            i = place[INDEX + lane]
-            narrow[LOWER + lane] = raster[i, line]
-            narrow[UPPER + lane] = raster[min(i + 1, last), line]
-    else:
-        for lane in range(lanes):
-            i = place[INDEX + lane]
-            narrow[LOWER + lane] = raster[line, i]
-            narrow[UPPER + lane] = raster[line, min(i + 1, last)]
+    start = line * wedge.line_stride
+    stride = wedge.lateral_stride
+    for lane in range(lanes):
+        narrow[LOWER + lane] = flat[np.uint64(start + place[INDEX + lane] * stride)]
+    for lane in range(lanes):
+        narrow[UPPER + lane] = flat[np.uint64(start + place[NEXT_INDEX + lane] * stride)]
     base = f4(below)
     for lane in range(lanes):
         share = narrow[FRACTION + lane]
@@ -119,8 +117,8 @@ def cross_line(
     narrow: NDArray,
     place: NDArray,
     lanes: int,
-    ground: NDArray,
-    obstacle: NDArray,
+    flat_ground: NDArray,
+    flat_obstacle: NDArray,
     wedge: Wedge,
     line: int,
     link: Link,
@@ -133,10 +131,11 @@ def cross_line(
         share = f4((at >> 1) & 0x7FFFFFFF) * f4(2.0**-31)
         inside = (i >= 0) & (i < last)
         place[INDEX + lane] = min(max(i, 0), last)
+        place[NEXT_INDEX + lane] = min(max(i + 1, 0), last)
         narrow[FRACTION + lane] = share if inside else f4(0.0)
-    crossing(narrow, place, lanes, ground, wedge, line, link.tx_height_m, CROSSING)
-    if obstacle.size > 0:
-        crossing(narrow, place, lanes, obstacle, wedge, line, 0.0, WOOD)
+    crossing(narrow, place, lanes, flat_ground, wedge, line, link.tx_height_m, CROSSING)
+    if flat_obstacle.size > 0:
+        crossing(narrow, place, lanes, flat_obstacle, wedge, line, 0.0, WOOD)
 
 
 @scalar
@@ -212,7 +211,8 @@ def raise_horizon(
     narrow: NDArray,
     surface: NDArray,
     block_top: NDArray,
-    super_top: NDArray,
+    group_top: NDArray,
+    region_top: NDArray,
     lanes: int,
     sample: int,
 ) -> None:
@@ -222,19 +222,23 @@ def raise_horizon(
         narrow[SURFACE_SLOPE + lane] = max(
             surface[sample, lane] * per_step, narrow[SURFACE_SLOPE + lane]
         )
-    if sample % BLOCK != BLOCK - 1:
-        return
-    block = sample // BLOCK
+    stop = sample + 1
+    if stop % BLOCK == 0:
+        block = stop // BLOCK - 1
+        _highest(surface, stop - BLOCK, stop, block_top, block, lanes)
+        if (block + 1) % GROUP == 0:
+            group = (block + 1) // GROUP - 1
+            _highest(block_top, block + 1 - GROUP, block + 1, group_top, group, lanes)
+        if (block + 1) % REGION == 0:
+            region = (block + 1) // REGION - 1
+            _highest(block_top, block + 1 - REGION, block + 1, region_top, region, lanes)
+
+
+@scalar
+def _highest(rows: NDArray, low: int, high: int, out: NDArray, row: int, lanes: int) -> None:
+    """Each lane's largest value of rows ``low`` up to ``high``."""
     for lane in range(lanes):
-        block_top[block, lane] = surface[sample, lane]
-    for i in range(sample - BLOCK + 1, sample):
+        out[row, lane] = rows[low, lane]
+    for i in range(low + 1, high):
         for lane in range(lanes):
-            block_top[block, lane] = max(surface[i, lane], block_top[block, lane])
-    if block % SUPER_BLOCKS != SUPER_BLOCKS - 1:
-        return
-    group = block // SUPER_BLOCKS
-    for lane in range(lanes):
-        super_top[group, lane] = block_top[block, lane]
-    for i in range(block - SUPER_BLOCKS + 1, block):
-        for lane in range(lanes):
-            super_top[group, lane] = max(block_top[i, lane], super_top[group, lane])
+            out[row, lane] = max(rows[i, lane], out[row, lane])

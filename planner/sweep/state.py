@@ -23,7 +23,8 @@ LANES = 32
 # path has them: an edge close to the receiver matters most, and half a cell aside is too far there.
 OWN_SAMPLES = 2  # at most 3: sample number q must lie between the q-th and the (q-1)-th line
 BLOCK = 16  # samples that share one bound
-SUPER_BLOCKS = 4  # blocks that share one further bound
+GROUP = 4  # blocks that share one further bound
+REGION = 16  # blocks that share one more
 RECALLED = 8  # blocks that are looked at first because they held an extreme at the line before
 
 
@@ -73,6 +74,8 @@ class Wedge(NamedTuple):
     first_line: int  # nearest line
     first_t: float  # its distance from the mast in cells, above 0 and at most 1
     lateral_last: int  # largest index along a line in the terrain
+    line_stride: int  # from line to line, and along a line, in the terrain's flat array
+    lateral_stride: int
     line_low: int  # the window's first and last line and place along a line
     line_high: int
     lateral_low: int
@@ -93,7 +96,8 @@ class Fan(NamedTuple):
     bent_ground: NDArray  # [sample, lane] float32
     bent_surface: NDArray  # [sample, lane] float32, with obstacles; the same array without any
     block_top: NDArray  # [block, lane] float32, highest bent surface of a block of samples
-    super_top: NDArray  # [block of blocks, lane] float32
+    group_top: NDArray  # [group of blocks, lane] float32
+    region_top: NDArray  # [region of blocks, lane] float32
     edge_steepness: NDArray  # [block] float32, 1 / distance from the cell to a block's first sample
     edge_weight: NDArray  # [block] float32, 1 / sqrt of the product of its distances to both ends
     root_steepness: NDArray  # [sample] float32, 1 / sqrt(i + 1)
@@ -145,15 +149,19 @@ V1 = 7 * LANES
 V2 = 8 * LANES
 ACROSS = 9 * LANES  # lateral distance from the mast in cells
 SPHERE = 10 * LANES  # 1 where the spherical earth may add something
-WIDE_ROWS = 11
+SPACING = 11 * LANES  # of the cell's exact samples, as a share of its distance
+PER_METRE = 12 * LANES  # steps per true metre on the way to the cell
+NU_SCALE = 13 * LANES  # by which BEST_NEAR becomes nu
+WIDE_ROWS = 14
 
 # Offsets into ``place``; the last two hold one entry more than there are lanes. What is computed
 # from them stands before them: a loop that stored further on could not be told from one that
 # overtakes itself.
 CELL = 0 * LANES  # lateral index of the lane's cell
 INDEX = 1 * LANES  # lateral index of the cell below a crossing
-EDGE = 2 * LANES  # lateral places of the lanes' edges on the present line, in 2^-32 cells
-EDGE_STEP = 3 * LANES + 1  # by which they move from line to line
-PLACES = 4 * LANES + 2
+NEXT_INDEX = 2 * LANES  # and of the one above
+EDGE = 3 * LANES  # lateral places of the lanes' edges on the present line, in 2^-32 cells
+EDGE_STEP = 4 * LANES + 1  # by which they move from line to line
+PLACES = 5 * LANES + 2
 
 FIXED = 4294967296.0  # 2^32, the fixed point of EDGE
