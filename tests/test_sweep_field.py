@@ -185,24 +185,18 @@ def test_a_hole_spoils_only_itself_and_what_lies_behind_it():
     assert np.isnan(holed.path_loss_db[~same]).all()
 
 
-def test_compiled_sweep_equals_plain_python():
+def test_compiled_sweep_equals_plain_python(monkeypatch):
     """The kernel as Python, with its helpers compiled, gives the same as the compiled one."""
     from planner.sweep import field as field_module
-    from planner.sweep import radial
+    from planner.sweep import walk
 
     rng = np.random.default_rng(5)
     ground = (rng.random((25, 25)) * 40.0).astype(np.float32)
     terrain = plain(ground=ground)
     compiled = field_at(terrain, 12.2, 11.6, radius_m=520.0)
-    original = field_module.sweep_radials
-    walk = radial._walk
-    try:
-        radial._walk = walk.py_func
-        field_module.sweep_radials = radial.sweep_radials.py_func
-        interpreted = field_at(terrain, 12.2, 11.6, radius_m=520.0)
-    finally:
-        field_module.sweep_radials = original
-        radial._walk = walk
+    monkeypatch.setattr(walk, "_walk", walk._walk.py_func)
+    monkeypatch.setattr(field_module, "walk_fan", walk.walk_fan.py_func)
+    interpreted = field_at(terrain, 12.2, 11.6, radius_m=520.0)
     np.testing.assert_allclose(interpreted.path_loss_db, compiled.path_loss_db, rtol=0, atol=1e-4)
     np.testing.assert_array_equal(interpreted.status, compiled.status)
 
@@ -212,7 +206,7 @@ def test_obstacles_block_but_do_not_lift_the_mast():
     wood = np.zeros((81, 81), dtype=np.float32)
     wood[:, 40:42] = 60.0
     bare = field_at(plain(), 40.0, 20.0, radius_m=1900.0)
-    wooded = field_at(plain(obstacle=wood), 40.0, 20.0, radius_m=1900.0, obstacle_clearing_m=120.0)
+    wooded = field_at(plain(obstacle=wood), 40.0, 20.0, radius_m=1900.0, obstacle_clearing_m=160.0)
     difference = wooded.path_loss_db - bare.path_loss_db
     cols = np.arange(difference.shape[1]) + wooded.col_start
     assert np.nanmax(np.abs(difference[:, cols < 40])) == 0.0
@@ -256,6 +250,9 @@ def test_map_and_single_path_agree_with_obstacles():
             for r, c in zip(rows[chosen], cols[chosen], strict=True)
         ]
     )
+    # A path that grazes a hole may cross it on one side only.
+    assert np.isnan(difference).mean() <= 0.01
+    difference = difference[np.isfinite(difference)]
     assert np.median(np.abs(difference)) <= 0.1
     assert np.percentile(np.abs(difference), 95) <= 2.0
 

@@ -22,8 +22,9 @@ from numba import vectorize as numba_vectorize
 def _whole_vectors() -> None:
     """Let the compiler use 512-bit vectors where there are any; NUMBA_CPU_FEATURES overrules."""
     features = llvmlite.binding.get_host_cpu_features()
-    if numba.config.CPU_FEATURES is None and features.get("avx512f", False):
-        numba.config.CPU_FEATURES = f"{features.flatten()},-prefer-256-bit"
+    options: Any = numba.config
+    if options.CPU_FEATURES is None and features.get("avx512f", False):
+        options.CPU_FEATURES = f"{features.flatten()},-prefer-256-bit"
 
 
 _whole_vectors()

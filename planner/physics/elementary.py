@@ -26,7 +26,7 @@ _BITS_OF_HALF_ROOT_2 = 0x3FE6A09E667F3BCD  # sqrt(1/2): mantissas are taken from
 
 
 @intrinsic
-def _bits(typing_context: Any, value: Any) -> Any:
+def _bits_of(typing_context: Any, value: Any) -> Any:
     """The bits of a float64 as an int64."""
 
     def generate(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
@@ -36,13 +36,17 @@ def _bits(typing_context: Any, value: Any) -> Any:
 
 
 @intrinsic
-def _from_bits(typing_context: Any, bits: Any) -> Any:
+def _float_of(typing_context: Any, bits: Any) -> Any:
     """The float64 that has these bits."""
 
     def generate(context: Any, builder: Any, signature: Any, arguments: Any) -> Any:
         return builder.bitcast(arguments[0], ir.DoubleType())
 
     return types.float64(types.int64), generate
+
+
+_bits: Any = _bits_of  # called with the value alone: numba supplies the context
+_from_bits: Any = _float_of
 
 
 @formula

@@ -1,56 +1,39 @@
-"""The cells of one line under a fan: their own last samples, path loss, angle and clearance."""
+"""Path loss, angle of departure and clearance of the cells of one line under a fan."""
 
 import math
 
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.geodesy import chord_distance_m
-from planner.physics._jit import pasted, scalar
+from planner.physics._jit import scalar
 from planner.physics.bullington import bullington_loss_db_scalar, bullington_point_nu_scalar
 from planner.physics.elementary import arctangent
 from planner.physics.free_space import free_space_loss_db_scalar
 from planner.physics.smooth_surface import fit_increments, smooth_surface_ends
 from planner.physics.spherical_earth import clears_sphere_scalar
-from planner.sweep.sampling_lines import crossing
+from planner.sweep.own_line import FREE
 from planner.sweep.state import (
-    ACROSS,
     BEST_NEAR,
     BEST_TANGENT,
     CELL,
-    CELL_GROUND_SLOPE,
     CELL_HOLES,
     COMPUTED,
     CROSSES_HOLE,
     DIRECT,
     DISTANCE,
-    EDGE,
     ELEVATION,
-    FRACTION,
     GROUND,
-    GROUND_SLOPE,
-    HOLES,
-    INDEX,
-    LANES,
     LAST_GROUND,
     LEAST_DISTANCE_M,
     LOSS,
     MOMENT,
-    NEXT_INDEX,
     NO_DATA,
     NU_SCALE,
-    OWN_BENT,
-    OWN_CROSSING,
-    OWN_WOOD,
     PER_METRE,
     RATIO,
-    RX_BENT,
     RX_EFFECTIVE,
-    SHARE,
-    SPACING,
     SPHERE,
     SUM,
-    SURFACE_SLOPE,
     TX_EFFECTIVE,
     TX_SLOPE,
     V1,
@@ -62,273 +45,6 @@ from planner.sweep.state import (
 )
 
 f4 = np.float32
-FREE = -math.sqrt(2.0)  # nu where the first Fresnel zone is just free
-
-
-@scalar
-def own_cells(
-    narrow: NDArray,
-    wide: NDArray,
-    place: NDArray,
-    lanes: int,
-    t: float,
-    wedge: Wedge,
-    mast: Mast,
-    inner: int,
-    outer: int,
-    radius_m: float,
-) -> bool:
-    """Find the cell of each lane on the line at distance t; whether any has one in range.
-
-    A lane has the cell between its edges, if there is one: lanes are at most a cell apart.
-    """
-    ahead_east = wedge.forward * mast.cell_m * t if wedge.along_rows else 0.0
-    ahead_north = 0.0 if wedge.along_rows else -wedge.forward * mast.cell_m * t
-    side_east = 0.0 if wedge.along_rows else mast.cell_m
-    side_north = -mast.cell_m if wedge.along_rows else 0.0
-    found = False
-    for lane in range(lanes):
-        cell = place[EDGE + lane + 1] >> 32
-        across = cell - wedge.side
-        distance = chord_distance_m(
-            ahead_east + across * side_east,
-            ahead_north + across * side_north,
-            mast.scale,
-            mast.scale_gradient_east_per_m,
-            mast.scale_gradient_north_per_m,
-        )
-        has_cell = cell != place[EDGE + lane] >> 32
-        in_window = (cell >= wedge.lateral_low) & (cell <= wedge.lateral_high)
-        # Cells on the diagonals belong to the wedges east and west.
-        in_wedge = (abs(across) < t) | ((abs(across) == t) & wedge.along_rows)
-        square = t * t + across * across
-        in_ring = (square > inner * inner) & (square <= outer * outer)
-        wanted = has_cell & in_window & in_wedge & in_ring & (distance <= radius_m)
-        place[CELL + lane] = min(max(cell, 0), wedge.lateral_last)
-        wide[ACROSS + lane] = across
-        wide[DISTANCE + lane] = distance
-        narrow[WANTED + lane] = f4(1.0) if wanted else f4(0.0)
-        found = found | wanted
-    return found
-
-
-@scalar
-def own_lines(
-    narrow: NDArray,
-    wide: NDArray,
-    place: NDArray,
-    lanes: int,
-    t: float,
-    flat_ground: NDArray,
-    flat_obstacle: NDArray,
-    wedge: Wedge,
-    line: int,
-    mast: Mast,
-    link: Link,
-) -> None:
-    """Ground (and obstacles) where the cells' own lines to the mast cross the lines before."""
-    start = line * wedge.line_stride
-    stride = wedge.lateral_stride
-    for lane in range(lanes):
-        height = flat_ground[np.uint64(start + place[CELL + lane] * stride)]
-        wide[GROUND + lane] = height
-        narrow[OWN_CROSSING + lane] = height - link.tx_height_m
-    if flat_obstacle.size > 0:
-        for lane in range(lanes):
-            narrow[OWN_WOOD + lane] = flat_obstacle[np.uint64(start + place[CELL + lane] * stride)]
-    _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 1)
-    _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 2)
-
-
-@pasted
-def _own_line(
-    narrow: NDArray,
-    wide: NDArray,
-    place: NDArray,
-    lanes: int,
-    t: float,
-    flat_ground: NDArray,
-    flat_obstacle: NDArray,
-    wedge: Wedge,
-    line: int,
-    mast: Mast,
-    link: Link,
-    back: int,
-) -> None:
-    """The same for the line ``back`` lines before."""
-    if t - back <= 0.0:  # the mast stands there
-        for lane in range(lanes):
-            narrow[OWN_CROSSING + back * LANES + lane] = mast.ground_m - link.tx_height_m
-            narrow[OWN_WOOD + back * LANES + lane] = 0.0
-        return
-    part = (t - back) / t
-    last = float(wedge.lateral_last)
-    for lane in range(lanes):
-        at = min(max(wedge.side + part * wide[ACROSS + lane], 0.0), last)
-        i = int(at)
-        place[INDEX + lane] = i
-        place[NEXT_INDEX + lane] = min(i + 1, wedge.lateral_last)
-        narrow[FRACTION + lane] = f4(at - i)
-    back_line = line - back * wedge.forward
-    crossing(
-        narrow,
-        place,
-        lanes,
-        flat_ground,
-        wedge,
-        back_line,
-        link.tx_height_m,
-        OWN_CROSSING + back * LANES,
-    )
-    if flat_obstacle.size > 0:
-        crossing(
-            narrow, place, lanes, flat_obstacle, wedge, back_line, 0.0, OWN_WOOD + back * LANES
-        )
-
-
-@scalar
-def own_profile(
-    narrow: NDArray,
-    wide: NDArray,
-    lanes: int,
-    t: float,
-    steps: float,
-    has_obstacles: bool,
-    link: Link,
-) -> None:
-    """The ray to each cell, its own last samples, and the horizon seen from the mast."""
-    bend = 1.0 / (2.0 * link.earth_radius_m)
-    for lane in range(lanes):
-        across = wide[ACROSS + lane]
-        length = math.sqrt(t * t + across * across) - 1e-9
-        whole = int(length)
-        wide[SPACING + lane] = 1.0 / (whole + 1.0 if length > whole else max(whole * 1.0, 1.0))
-    for lane in range(lanes):
-        distance = wide[DISTANCE + lane]
-        inverse = 1.0 / distance
-        wide[PER_METRE + lane] = steps * inverse
-        wide[NU_SCALE + lane] = steps * math.sqrt(inverse * (2.0 / link.wavelength_m))
-        bulge = distance * distance * bend
-        rx_bent = wide[GROUND + lane] + link.receiver_height_m - link.tx_height_m - bulge
-        narrow[RX_BENT + lane] = rx_bent
-        narrow[DIRECT + lane] = rx_bent / steps
-        narrow[TX_SLOPE + lane] = narrow[SURFACE_SLOPE + lane]
-        narrow[CELL_GROUND_SLOPE + lane] = narrow[GROUND_SLOPE + lane]
-        narrow[CELL_HOLES + lane] = narrow[HOLES + lane]
-    _own_sample(narrow, wide, lanes, t, steps, has_obstacles, link, 1)
-    _own_sample(narrow, wide, lanes, t, steps, has_obstacles, link, 2)
-
-
-@pasted
-def _own_sample(
-    narrow: NDArray,
-    wide: NDArray,
-    lanes: int,
-    t: float,
-    steps: float,
-    has_obstacles: bool,
-    link: Link,
-    q: int,
-) -> None:
-    """The sample q steps before each cell."""
-    bend = 1.0 / (2.0 * link.earth_radius_m)
-    near = OWN_CROSSING + (q - 1) * LANES
-    far = OWN_CROSSING + q * LANES
-    near_wood = OWN_WOOD + (q - 1) * LANES
-    far_wood = OWN_WOOD + q * LANES
-    lower = max(t - q, 0.0)
-    per_line = 1.0 / (t - (q - 1) - lower)
-    for lane in range(lanes):
-        distance = wide[DISTANCE + lane]
-        share = q * wide[SPACING + lane]
-        exists = share < 1.0 - 1e-9
-        share = share if exists else 0.5
-        part = f4((t * (1.0 - share) - lower) * per_line) if exists else f4(0.0)
-        height = narrow[far + lane] + part * (narrow[near + lane] - narrow[far + lane])
-        x = distance * (1.0 - share)
-        if has_obstacles:
-            wood = narrow[far_wood + lane] + part * (
-                narrow[near_wood + lane] - narrow[far_wood + lane]
-            )
-            counts = (x >= link.obstacle_clearing_m) & (distance - x >= link.obstacle_clearing_m)
-            surface = height + wood if counts else height
-        else:
-            surface = height
-        bent = f4(surface - x * x * bend) if exists else f4(-np.inf)
-        per_step = f4(1.0 / (steps * (1.0 - share)))
-        slope = height * per_step if exists else f4(-np.inf)
-        narrow[SHARE + (q - 1) * LANES + lane] = share
-        narrow[OWN_BENT + (q - 1) * LANES + lane] = bent
-        narrow[TX_SLOPE + lane] = max(bent * per_step, narrow[TX_SLOPE + lane])
-        narrow[CELL_GROUND_SLOPE + lane] = max(slope, narrow[CELL_GROUND_SLOPE + lane])
-        narrow[CELL_HOLES + lane] += (height - height) if exists else f4(0.0)
-
-
-@scalar
-def start_search(narrow: NDArray, wide: NDArray, lanes: int, steps: float) -> None:
-    """First candidates: the own samples, and what is too far from mattering to be sought.
-
-    Where the ray is free the tangent from the receiver is not needed; what is not wanted is
-    infinite, so that nothing is better.
-    """
-    for lane in range(lanes):
-        blocked = narrow[TX_SLOPE + lane] >= narrow[DIRECT + lane]
-        wanted = (narrow[WANTED + lane] > f4(0.0)) & (narrow[CELL_HOLES + lane] == f4(0.0))
-        least = f4(FREE / wide[NU_SCALE + lane])
-        narrow[BEST_TANGENT + lane] = f4(-np.inf) if wanted & blocked else f4(np.inf)
-        narrow[BEST_NEAR + lane] = least if wanted else f4(np.inf)
-    _own_candidate(narrow, lanes, steps, 0)
-    _own_candidate(narrow, lanes, steps, 1)
-
-
-@pasted
-def _own_candidate(narrow: NDArray, lanes: int, steps: float, q: int) -> None:
-    u = f4(steps)
-    one = f4(1.0)
-    for lane in range(lanes):
-        share = narrow[SHARE + q * LANES + lane]
-        height = narrow[OWN_BENT + q * LANES + lane]
-        tangent = (height - narrow[RX_BENT + lane]) / (u * share)
-        place = u * (one - share)
-        near = (height - narrow[DIRECT + lane] * place) / np.sqrt(place * u * share)
-        narrow[BEST_TANGENT + lane] = max(tangent, narrow[BEST_TANGENT + lane])
-        narrow[BEST_NEAR + lane] = max(near, narrow[BEST_NEAR + lane])
-
-
-@scalar
-def count_cleared(
-    narrow: NDArray,
-    wide: NDArray,
-    ground: NDArray,
-    surface: NDArray,
-    root: NDArray,
-    lanes: int,
-    low: int,
-    high: int,
-    steps: float,
-    link: Link,
-    horizon: bool,
-) -> None:
-    """Let the samples ``low`` up to ``high`` count, with obstacles only beyond the clearing.
-
-    With ``horizon`` for the horizon seen from the mast, else for what the search seeks.
-    """
-    for i in range(low, high):
-        k = steps - (i + 1.0)
-        place = f4(i + 1.0)
-        steepness = f4(1.0 / k)
-        weight = root[i] * f4(math.sqrt(steepness))
-        share = k / steps
-        for lane in range(lanes):
-            beyond = wide[DISTANCE + lane] * share >= link.obstacle_clearing_m
-            height = surface[i, lane] if beyond else ground[i, lane]
-            if horizon:
-                narrow[TX_SLOPE + lane] = max(height / place, narrow[TX_SLOPE + lane])
-            else:
-                tangent = (height - narrow[RX_BENT + lane]) * steepness
-                near = (height - narrow[DIRECT + lane] * place) * weight
-                narrow[BEST_TANGENT + lane] = max(tangent, narrow[BEST_TANGENT + lane])
-                narrow[BEST_NEAR + lane] = max(near, narrow[BEST_NEAR + lane])
 
 
 @scalar

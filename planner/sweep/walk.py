@@ -15,18 +15,16 @@ from numpy.typing import NDArray
 
 from planner.physics._jit import scalar
 from planner.physics.spherical_earth import clears_sphere_scalar
-from planner.sweep.cells import (
+from planner.sweep.cells import losses, may_meet_sphere, write_cells
+from planner.sweep.curved_earth import excess_over_sphere_db
+from planner.sweep.extremes import search
+from planner.sweep.own_line import (
     count_cleared,
-    losses,
-    may_meet_sphere,
     own_cells,
     own_lines,
     own_profile,
     start_search,
-    write_cells,
 )
-from planner.sweep.curved_earth import excess_over_sphere_db
-from planner.sweep.extremes import search
 from planner.sweep.sampling_lines import (
     cross_line,
     include_sample,
