@@ -60,6 +60,8 @@ def answers_of(customers) -> list[CustomerAnswer]:
             blocking_latitude=-46.2012344,
             blocking_longitude=-121.4012346,
             blocking_excess_m=12.34,
+            blocking_ground_m=431.25,
+            blocking_obstacle_m=18.0,
             path_loss_db=140.0,
             free_space_loss_db=120.0,
             diffraction_loss_db=20.0,
@@ -381,15 +383,16 @@ def test_the_table_has_one_line_per_row_with_fixed_decimals(tmp_path):
         "id,address,latitude,longitude,antenna_height_m,verdict,reason,note,best_sector,tower,"
         "distance_m,bearing_to_tower_deg,elevation_angle_deg,received_signal_dbm,fade_margin_db,"
         "second_sector,server_margin_db,sector_gain_dbi,line_of_sight,blocking_distance_m,"
-        "blocking_latitude,blocking_longitude,blocking_excess_m,path_loss_db,free_space_loss_db,"
+        "blocking_latitude,blocking_longitude,blocking_excess_m,blocking_ground_m,"
+        "blocking_obstacle_m,path_loss_db,free_space_loss_db,"
         "diffraction_loss_db,Reason_given,'=tag",
         "1,Mill Lane 3,-46.2041000,-121.4122000,5.00,not served,too far,,west-1,west,1234.6,0.00,"
-        "0.00,-81.23,-6.23,west-2,3.00,12.35,no,400.0,-46.201234,-121.401235,12.3,140.00,120.00,"
+        "0.00,-81.23,-6.23,west-2,3.00,12.35,no,400.0,-46.201234,-121.401235,12.3,431.2,18.0,140.00,120.00,"
         "20.00,mine,'=A1",
         "'=2,,,,,not computed,latitude 'abc' is not a number of decimal degrees; longitude is "
-        "missing" + "," * 21,
+        "missing" + "," * 23,
         '3,c,,,,not computed,"latitude and longitude are both 0, which stands for a place that is '
-        'not known"' + "," * 21,
+        'not known"' + "," * 23,
         "",
     ]
 

@@ -186,6 +186,8 @@ def test_a_wall_is_named_with_its_place():
     assert answer.blocking_longitude == pytest.approx(longitude, abs=2e-6)
     bulge = 500.0 * 1500.0 / (2.0 * 4.0 / 3.0 * 6_371_000.0)
     assert answer.blocking_excess_m == pytest.approx(90.0 + bulge - 23.75, abs=0.01)
+    assert answer.blocking_ground_m == pytest.approx(90.0, abs=1e-3)
+    assert answer.blocking_obstacle_m == 0.0
     assert answer.reason == (
         f"{-answer.fade_margin_db:.1f} dB below the threshold of -75 dBm; blocked 1.50 km away, "
         f"66.3 m above the direct ray (diffraction {answer.diffraction_loss_db:.1f} dB)"
@@ -459,3 +461,16 @@ def test_rows_agree_with_the_layers():
     assert np.array_equal(served[~close], layer_served[~close])
     assert served.any()
     assert not served.all()
+
+
+def test_a_wood_that_blocks_is_told_apart_from_its_ground():
+    """Ground of 10 m with trees of 40 m on it: both heights are reported."""
+    ground = np.full((81, 81), 10.0, dtype=np.float32)
+    wood = np.zeros((81, 81), dtype=np.float32)
+    wood[:, 38] = 40.0
+    terrain = plain(ground=ground, obstacle=wood)
+    mast = tower(terrain, 40.0, 20.0, "mast", sector("a"))
+    (answer,) = checked(terrain, [mast], [customer(terrain, 40.0, 60.0)])
+    assert answer.line_of_sight is False
+    assert answer.blocking_ground_m == pytest.approx(10.0, abs=1e-3)
+    assert answer.blocking_obstacle_m == pytest.approx(40.0, abs=0.1)

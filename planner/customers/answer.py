@@ -33,6 +33,8 @@ class CustomerAnswer:
     blocking_latitude: float = math.nan
     blocking_longitude: float = math.nan
     blocking_excess_m: float = math.nan  # how far it rises above the direct ray
+    blocking_ground_m: float = math.nan  # the ground there, above the datum
+    blocking_obstacle_m: float = math.nan  # trees or roofs on it, above the ground
     path_loss_db: float = math.nan
     free_space_loss_db: float = math.nan
     diffraction_loss_db: float = math.nan

@@ -269,6 +269,8 @@ def _computed(
         blocking_latitude=blocking_latitude,
         blocking_longitude=blocking_longitude,
         blocking_excess_m=link.blocking_excess_m,
+        blocking_ground_m=link.blocking_ground_m,
+        blocking_obstacle_m=link.blocking_obstacle_m,
         path_loss_db=link.path_loss_db,
         free_space_loss_db=link.free_space_loss_db,
         diffraction_loss_db=link.diffraction_loss_db,

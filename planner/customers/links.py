@@ -27,6 +27,8 @@ class Link:
     line_of_sight: bool
     blocking_distance_m: float  # from the customer; NaN where nothing blocks
     blocking_excess_m: float
+    blocking_ground_m: float  # above the datum
+    blocking_obstacle_m: float  # of trees or roofs, above that ground
     path_loss_db: float
     free_space_loss_db: float
     diffraction_loss_db: float
@@ -40,6 +42,7 @@ def path_key(tower_index: int, sector: Sector) -> PathKey:
 def link_of(path: Path) -> Link:
     """The numbers of a computed path from the tower to the customer."""
     from_tower_m, excess_m = path.blocking_distance_m, path.blocking_excess_m
+    ground_m, obstacle_m = path.blocking_ground_m, path.blocking_obstacle_m
     return Link(
         distance_m=path.distance_m,
         azimuth_deg=path.azimuth_deg,
@@ -49,6 +52,8 @@ def link_of(path: Path) -> Link:
         line_of_sight=path.line_of_sight,
         blocking_distance_m=math.nan if from_tower_m is None else path.distance_m - from_tower_m,
         blocking_excess_m=math.nan if excess_m is None else excess_m,
+        blocking_ground_m=math.nan if ground_m is None else ground_m,
+        blocking_obstacle_m=math.nan if obstacle_m is None else obstacle_m,
         path_loss_db=path.path_loss_db,
         free_space_loss_db=path.free_space_loss_db,
         diffraction_loss_db=path.diffraction.loss_db,

@@ -86,6 +86,8 @@ COLUMNS = (
     Column(name="blocking_latitude", value=lambda a: a.blocking_latitude, decimals=6),
     Column(name="blocking_longitude", value=lambda a: a.blocking_longitude, decimals=6),
     Column(name="blocking_excess_m", value=lambda answer: answer.blocking_excess_m, decimals=1),
+    Column(name="blocking_ground_m", value=lambda answer: answer.blocking_ground_m, decimals=1),
+    Column(name="blocking_obstacle_m", value=lambda a: a.blocking_obstacle_m, decimals=1),
     Column(name="path_loss_db", value=lambda answer: answer.path_loss_db, decimals=2),
     Column(name="free_space_loss_db", value=lambda a: a.free_space_loss_db, decimals=2),
     Column(name="diffraction_loss_db", value=lambda a: a.diffraction_loss_db, decimals=2),

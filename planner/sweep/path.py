@@ -61,6 +61,22 @@ class Path:
         """How far the dominant obstruction rises above the direct ray; None where nothing does."""
         return -self.worst_clearance_m if self.worst_clearance_m <= 0.0 else None
 
+    @property
+    def blocking_ground_m(self) -> float | None:
+        """Ground under the dominant obstruction, above the datum; None where nothing blocks."""
+        return self._at_blocking_point(self.profile_ground_m)
+
+    @property
+    def blocking_obstacle_m(self) -> float | None:
+        """Height of trees or roofs on that ground, as they counted; None where nothing blocks."""
+        return self._at_blocking_point(self.profile_obstacle_m)
+
+    def _at_blocking_point(self, heights_m: NDArray[np.float64]) -> float | None:
+        place_m = self.blocking_distance_m
+        if place_m is None:
+            return None
+        return float(heights_m[int(np.searchsorted(self.profile_distance_m, place_m))])
+
     def earth_bulge_m(self) -> NDArray[np.float64]:
         """Height of the curved earth above the straight chord, at each profile point. (n,)"""
         d = self.profile_distance_m
