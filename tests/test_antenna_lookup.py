@@ -16,7 +16,7 @@ from planner.antenna import (
     mounted_gain_dbi,
     two_cut_pattern,
 )
-from planner.antenna.lookup import GainArrays, table_gain_dbi
+from planner.antenna.lookup import BINS_PER_QUARTER, GainArrays, table_gain_dbi
 from planner.physics._jit import parallel
 
 
@@ -170,13 +170,17 @@ def test_nan_and_directions_that_do_not_exist() -> None:
 
 
 def test_table_is_read_only_float32() -> None:
-    """The table holds float32 that cannot be changed, with nodes at both ends of the axes."""
+    """The table holds float32 that cannot be changed, and its places run from the first node to the last."""
     arrays = gain_table(PATTERNS["TR 36.814"][0], azimuth_deg=0.0).arrays
     assert arrays.gain_dbi.dtype == np.float32
-    assert arrays.gain_dbi.shape == (arrays.elevation_deg.size, arrays.azimuth_offset_deg.size)
-    assert (arrays.azimuth_offset_deg[0], arrays.azimuth_offset_deg[-1]) == (0.0, 360.0)
-    assert (arrays.elevation_deg[0], arrays.elevation_deg[-1]) == (-90.0, 90.0)
-    assert (arrays.azimuth_bin_node.size, arrays.elevation_bin_node.size) == (360 * 32, 180 * 32)
+    rows, cols = arrays.gain_dbi.shape
+    for places, bins, nodes in (
+        (arrays.azimuth_node, 4 * BINS_PER_QUARTER, cols - 1),
+        (arrays.elevation_node, 2 * BINS_PER_QUARTER, rows - 1),
+    ):
+        assert places.dtype == np.float32
+        assert places.shape == (bins + 2,)
+        assert (places[0], places[-2], places[-1]) == (0.0, nodes - 1, nodes - 1)
     with pytest.raises(ValueError, match="read-only"):
         arrays.gain_dbi[0, 0] = 0.0
 

@@ -2,42 +2,49 @@
 
 The table itself is in the antenna's own frame, so one table serves every azimuth. Its nodes lie on
 multiples of 1/32 degree, close together where the pattern bends and far apart where it is
-straight; an array of 1/32 degree bins leads from an angle to its nodes. A mechanical tilt is a
-second, coarse table: by how much it shifts the azimuth offset and the elevation of each direction.
-That shift is smooth, so one degree is fine enough; far from the horizon it is computed instead.
+straight. Directions come as unit vectors, which a mechanical tilt merely turns. No angle is
+computed from them: the places between the nodes are tabulated over the sine of the elevation and
+over a stand-in for the azimuth that takes one division, see :func:`vector_gain_dbi`.
 """
 
 import math
 from dataclasses import dataclass
-from typing import Literal, NamedTuple
+from typing import Any, Literal, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.ndimage import maximum_filter1d
 
-from planner.antenna.mounting import antenna_direction_deg, tilted_direction_deg
+from planner.antenna.mounting import checked_tilt
 from planner.antenna.pattern import Pattern
-from planner.physics._jit import scalar
+from planner.physics._jit import inlined, scalar
 
 BINS_PER_DEG = 32
 STEPS_DEG = (1.0, 0.5, 0.25, 0.125, 0.0625, 0.03125)  # powers of two: sums of them are exact
 WANTED_ERROR_DB = 0.015  # of each axis, within DEPTH_DB of the peak
 DEEP_ERROR_DB = 0.5  # of each axis, further below the peak
 DEPTH_DB = 32.0
-SHIFT_REACH_DEG = 60.0  # elevation and tilt together, up to which the table of shifts is used
 BEND_REACH = 0.08  # of a beamwidth: bends may move so far between two sampled cuts
+SEAM_DEG = -90.0  # azimuth offset at which the table begins, and ends one turn later
+BINS_PER_QUARTER = 8192  # of a turn in azimuth; and of the sine of the elevation from 0 to 1
+
+# In float32, so that kernels stay in float32; a wider argument makes the result wider.
+_BINS = np.float32(BINS_PER_QUARTER)
+_ZERO, _TWO = np.float32(0.0), np.float32(2.0)
+_TINY = np.float32(1e-30)
 
 
 class GainArrays(NamedTuple):
-    """What a kernel needs of a :class:`GainTable`."""
+    """What a kernel needs of a :class:`GainTable`.
+
+    Each array has one entry more at the end of each axis, so that the last node has a neighbour.
+    """
 
     gain_dbi: NDArray[np.float32]  # [elevation node, azimuth node]
-    azimuth_offset_deg: NDArray[np.float64]  # nodes, from 0 to 360
-    elevation_deg: NDArray[np.float64]  # nodes, from -90 to 90
-    azimuth_bin_node: NDArray[np.int32]  # for each bin the node at or below it
-    elevation_bin_node: NDArray[np.int32]
-    shift_deg: NDArray[np.float32]  # [elevation + 60, azimuth offset, (azimuth, elevation)]
-    mechanical_downtilt_deg: float
+    azimuth_node: NDArray[np.float32]  # place between the nodes, at each bin's start
+    elevation_node: NDArray[np.float32]
+    tilt_cosine: float  # of the mechanical downtilt
+    tilt_sine: float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -58,6 +65,59 @@ class GainTable:
                 array.setflags(write=False)
 
 
+@inlined
+def vector_gain_dbi(
+    gain_dbi: NDArray[np.float32],
+    azimuth_nodes: int,
+    azimuth_node: NDArray[np.float32],
+    elevation_node: NDArray[np.float32],
+    tilt_cosine: Any,
+    tilt_sine: Any,
+    ahead: Any,
+    right: Any,
+    up: Any,
+) -> Any:
+    """Gain towards a unit vector by bilinear interpolation in dB. [dBi]
+
+    The first five as in :class:`GainArrays`, but the gains flat, with the number of azimuth nodes
+    in a row. The vector is true to the horizon, ``ahead`` along the boresight's azimuth; none of it
+    may be NaN. float32 gives float32.
+
+    The stand-in for the azimuth is the sine over the sum of the magnitudes of sine and cosine, from
+    -1 at -90 degrees to 1 at 90, and mirrored behind up to 3 at 270. There are no branches, and
+    the masks say that an index is not negative: so the compiler can do many cells at once.
+    """
+    along = ahead * tilt_cosine - up * tilt_sine
+    above = ahead * tilt_sine + up * tilt_cosine
+    turned = right / max(abs(along) + abs(right), _TINY)
+    turned = turned if along >= _ZERO else _TWO - turned
+    across = turned * _BINS + _BINS
+    upwards = above * _BINS + _BINS
+    azimuth_bin = np.int32(across)
+    elevation_bin = np.int32(upwards)
+    azimuth_index = np.uint32(azimuth_bin & 0xFFFF)
+    elevation_index = np.uint32(elevation_bin & 0x7FFF)
+    left_node = azimuth_node[azimuth_index]
+    lower_node = elevation_node[elevation_index]
+    across = left_node + (across - np.float32(azimuth_bin)) * (
+        azimuth_node[np.uint32(azimuth_index + 1)] - left_node
+    )
+    upwards = lower_node + (upwards - np.float32(elevation_bin)) * (
+        elevation_node[np.uint32(elevation_index + 1)] - lower_node
+    )
+    left = np.int32(across)
+    lower = np.int32(upwards)
+    across -= np.float32(left)
+    upwards -= np.float32(lower)
+    first = np.uint32((lower * azimuth_nodes + left) & 0x7FFFFFFF)
+    second = np.uint32((lower * azimuth_nodes + left + azimuth_nodes) & 0x7FFFFFFF)
+    lower_left = gain_dbi[first]
+    upper_left = gain_dbi[second]
+    below = lower_left + across * (gain_dbi[np.uint32(first + 1)] - lower_left)
+    over = upper_left + across * (gain_dbi[np.uint32(second + 1)] - upper_left)
+    return below + upwards * (over - below)
+
+
 @scalar
 def table_gain_dbi(arrays: GainArrays, azimuth_offset_deg: float, elevation_deg: float) -> float:
     """Gain from a table by bilinear interpolation in dB; NaN where an angle is NaN. [dBi]
@@ -67,48 +127,19 @@ def table_gain_dbi(arrays: GainArrays, azimuth_offset_deg: float, elevation_deg:
     """
     if not abs(elevation_deg) <= 90.0 or not abs(azimuth_offset_deg) < math.inf:
         return math.nan
-    offset_deg = azimuth_offset_deg - 360.0 * math.floor(azimuth_offset_deg / 360.0)
-    tilt_deg = arrays.mechanical_downtilt_deg
-    if tilt_deg != 0.0:
-        if abs(elevation_deg) + abs(tilt_deg) < SHIFT_REACH_DEG:
-            shift = arrays.shift_deg
-            row = int(elevation_deg + SHIFT_REACH_DEG)
-            col = min(int(offset_deg), 359)
-            upwards = elevation_deg + SHIFT_REACH_DEG - row
-            across = offset_deg - col
-            lower_left = (1.0 - upwards) * (1.0 - across)
-            lower_right = (1.0 - upwards) * across
-            upper_left = upwards * (1.0 - across)
-            upper_right = upwards * across
-            offset_deg += (
-                lower_left * shift[row, col, 0]
-                + lower_right * shift[row, col + 1, 0]
-                + upper_left * shift[row + 1, col, 0]
-                + upper_right * shift[row + 1, col + 1, 0]
-            )
-            elevation_deg += (
-                lower_left * shift[row, col, 1]
-                + lower_right * shift[row, col + 1, 1]
-                + upper_left * shift[row + 1, col, 1]
-                + upper_right * shift[row + 1, col + 1, 1]
-            )
-        else:
-            offset_deg, elevation_deg = tilted_direction_deg(offset_deg, elevation_deg, tilt_deg)
-        offset_deg -= 360.0 * math.floor(offset_deg / 360.0)
-    azimuth_bin = min(int(offset_deg * BINS_PER_DEG), arrays.azimuth_bin_node.size - 1)
-    elevation_bin = min(
-        int((elevation_deg + 90.0) * BINS_PER_DEG), arrays.elevation_bin_node.size - 1
+    offset_rad = math.radians(azimuth_offset_deg - 360.0 * math.floor(azimuth_offset_deg / 360.0))
+    elevation_rad = math.radians(elevation_deg)
+    return vector_gain_dbi(
+        arrays.gain_dbi.ravel(),
+        arrays.gain_dbi.shape[1],
+        arrays.azimuth_node,
+        arrays.elevation_node,
+        arrays.tilt_cosine,
+        arrays.tilt_sine,
+        math.cos(elevation_rad) * math.cos(offset_rad),
+        math.cos(elevation_rad) * math.sin(offset_rad),
+        math.sin(elevation_rad),
     )
-    left = arrays.azimuth_bin_node[azimuth_bin]
-    lower = arrays.elevation_bin_node[elevation_bin]
-    left_deg = arrays.azimuth_offset_deg[left]
-    lower_deg = arrays.elevation_deg[lower]
-    across = (offset_deg - left_deg) / (arrays.azimuth_offset_deg[left + 1] - left_deg)
-    upwards = (elevation_deg - lower_deg) / (arrays.elevation_deg[lower + 1] - lower_deg)
-    table = arrays.gain_dbi
-    below = table[lower, left] + across * (table[lower, left + 1] - table[lower, left])
-    above = table[lower + 1, left] + across * (table[lower + 1, left + 1] - table[lower + 1, left])
-    return below + upwards * (above - below)
 
 
 def gain_table(
@@ -135,45 +166,44 @@ def gain_table(
     there the step is drawn out over 1/32 degree. At the antenna's own zenith and nadir, where a
     gain may depend on an azimuth that has no meaning there, nothing is promised within 1.5 degrees.
     """
+    checked_tilt(mechanical_downtilt_deg)
     azimuths, elevations = _nodes(pattern, electrical_downtilt_deg)
     gain_dbi = pattern.gain(
         azimuths[np.newaxis, :],
         elevations[:, np.newaxis],
         electrical_downtilt_deg=electrical_downtilt_deg,
-    ).astype(np.float32)
+    )
+    sines = np.arange(-BINS_PER_QUARTER, BINS_PER_QUARTER + 1) / BINS_PER_QUARTER
+    ahead = np.concatenate((1.0 - np.abs(sines), np.abs(sines[1:]) - 1.0))
+    right = np.concatenate((sines, -sines[1:]))
+    offsets = np.mod(np.degrees(np.arctan2(right, ahead)) - SEAM_DEG, 360.0) + SEAM_DEG
+    offsets[-1] = SEAM_DEG + 360.0
     return GainTable(
         azimuth_deg=float(azimuth_deg),
         mechanical_downtilt_deg=float(mechanical_downtilt_deg),
         electrical_downtilt_deg=float(electrical_downtilt_deg),
         arrays=GainArrays(
-            gain_dbi=gain_dbi,
-            azimuth_offset_deg=azimuths,
-            elevation_deg=elevations,
-            azimuth_bin_node=_bin_nodes(azimuths),
-            elevation_bin_node=_bin_nodes(elevations),
-            shift_deg=_shifts(float(mechanical_downtilt_deg)),
-            mechanical_downtilt_deg=float(mechanical_downtilt_deg),
+            gain_dbi=np.pad(gain_dbi, (0, 1), mode="edge").astype(np.float32),
+            azimuth_node=_places(offsets, azimuths),
+            elevation_node=_places(np.degrees(np.arcsin(sines)), elevations),
+            tilt_cosine=math.cos(math.radians(mechanical_downtilt_deg)),
+            tilt_sine=math.sin(math.radians(mechanical_downtilt_deg)),
         ),
     )
 
 
-def _shifts(mechanical_downtilt_deg: float) -> NDArray[np.float32]:
-    """What a mechanical tilt adds to azimuth offset and elevation, at each whole degree."""
-    azimuths = np.arange(361.0)[np.newaxis, :]
-    elevations = np.arange(-SHIFT_REACH_DEG, SHIFT_REACH_DEG + 1.0)[:, np.newaxis]
-    seen_azimuth_deg, seen_elevation_deg = antenna_direction_deg(
-        azimuths, elevations, mechanical_downtilt_deg=mechanical_downtilt_deg
-    )
-    if mechanical_downtilt_deg == 0.0:
-        return np.zeros((0, 0, 2), dtype=np.float32)
-    turned = np.mod(seen_azimuth_deg - azimuths + 180.0, 360.0) - 180.0
-    return np.stack((turned, seen_elevation_deg - elevations), axis=-1).astype(np.float32)
+def _places(
+    angles_deg: NDArray[np.float64], nodes_deg: NDArray[np.float64]
+) -> NDArray[np.float32]:
+    """Where angles lie between the nodes, counted in nodes, and the last of them once more."""
+    places = np.interp(angles_deg, nodes_deg, np.arange(float(nodes_deg.size)))
+    return np.append(places, places[-1]).astype(np.float32)
 
 
 def _nodes(
     pattern: Pattern, electrical_downtilt_deg: float
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Azimuth offsets 0 to 360 and elevations -90 to 90 between which the gain is nearly straight.
+    """Azimuth offsets -90 to 270 and elevations -90 to 90 between which the gain is nearly straight.
 
     Found from cuts through the pattern, dense where formulas join their pieces: bends may run
     slantwise through the beam.
@@ -190,14 +220,14 @@ def _nodes(
     height_deg = min(pattern.elevation_beamwidth_deg, 60.0)
     beam_deg = elevations[int(np.argmax(upright.max(axis=0)))]
     heights = height_deg * np.linspace(0.0, 1.5, 32)
-    azimuths = np.arange(0.0, 360.0, bin_deg)
+    azimuths = SEAM_DEG + np.arange(0.0, 360.0, bin_deg)
     level = pattern.gain(
         azimuths[np.newaxis, :],
         np.clip(beam_deg + np.concatenate((heights, -heights[1::4])), -90.0, 90.0)[:, np.newaxis],
         electrical_downtilt_deg=electrical_downtilt_deg,
     )
     return (
-        _placed(0.0, _allowed_step_deg(level, BEND_REACH * width_deg, around=True)),
+        _placed(SEAM_DEG, _allowed_step_deg(level, BEND_REACH * width_deg, around=True)),
         _placed(-90.0, _allowed_step_deg(upright, BEND_REACH * height_deg, around=False)),
     )
 
@@ -237,9 +267,3 @@ def _placed(start_deg: float, allowed_deg: NDArray[np.float64]) -> NDArray[np.fl
                 places.append(place + bins)
                 break
     return start_deg + np.array(places) / BINS_PER_DEG
-
-
-def _bin_nodes(nodes_deg: NDArray[np.float64]) -> NDArray[np.int32]:
-    """For each bin of 1/32 degree from the first node on, the node at or below it."""
-    bins_between = np.round(np.diff(nodes_deg) * BINS_PER_DEG).astype(int)
-    return np.repeat(np.arange(bins_between.size, dtype=np.int32), bins_between)

@@ -1,7 +1,9 @@
 """The one place where numba's compile options stand.
 
 ``error_model="numpy"`` lets a division by zero give inf or NaN as numpy does; ``fastmath`` is off,
-since holes in the terrain are NaN and must stay so.
+since holes in the terrain are NaN and must stay so. ``inlined`` is for the steps of a loop over
+millions of cells: they become part of their caller, and a product and a sum may be rounded once
+instead of twice.
 """
 
 from collections.abc import Callable
@@ -13,6 +15,9 @@ from numba import vectorize as numba_vectorize
 
 scalar = njit(cache=True, error_model="numpy", nogil=True)
 parallel = njit(cache=True, error_model="numpy", nogil=True, parallel=True)
+inlined = njit(
+    cache=True, error_model="numpy", nogil=True, forceinline=True, fastmath={"contract"}
+)
 
 
 def over_arrays(scalar_function: Any) -> Callable[..., Any]:
