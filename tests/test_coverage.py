@@ -7,10 +7,10 @@ from dataclasses import replace
 import numba
 import numpy as np
 import pytest
+from numba.core.dispatcher import Dispatcher
 
-from planner import coverage
-from planner.antenna import Isotropic, Pattern, Tr36814Sector, gain_table, mounted_gain_dbi
-from planner.coverage import Coverage, combine
+from planner.antenna import GainTable, Isotropic, Pattern, Tr36814Sector, gain_table, mounted_gain_dbi
+from planner.coverage import CellCounts, Coverage, combine, kernels, layers
 from planner.geodesy import LocalFrame
 from planner.network import Radio, Sector, Terminal
 from planner.physics.link import received_signal_dbm
@@ -23,7 +23,15 @@ PANEL = Tr36814Sector(
 )
 WHIP = Isotropic(name="whip", gain_dbi=3.0)
 
-Item = tuple[PathField, Sector, "coverage.GainTable"]
+LAYERS = {
+    "received_signal_dbm": np.float32,
+    "best_server": np.int16,
+    "server_margin_db": np.float32,
+    "fresnel_clearance_ratio": np.float32,
+    "status": np.uint8,
+}
+
+Item = tuple[PathField, Sector, GainTable]
 
 
 def radio(*, threshold_dbm: float = -75.0, power_dbm: float = 19.0) -> Radio:
@@ -59,6 +67,8 @@ def field(
     if status is None:
         status = np.zeros((rows, cols), dtype=np.uint8)
     path_loss[status != COMPUTED] = np.nan
+    clearance = np.minimum(rng.normal(0.5, 1.0, (rows, cols)), 1.0)
+    clearance[status != COMPUTED] = np.nan
     return PathField(
         row_start=window[0],
         col_start=window[2],
@@ -82,6 +92,7 @@ def field(
         radius_m=3000.0,
         path_loss_db=path_loss,
         departure_elevation_deg=elevation.astype(np.float32),
+        fresnel_clearance_ratio=clearance.astype(np.float32),
         status=status,
     )
 
@@ -124,7 +135,7 @@ def three_sectors(threshold_dbm: float = -75.0) -> list[Item]:
 
 
 def assert_same(expected: Coverage, actual: Coverage) -> None:
-    for layer in ("received_signal_dbm", "best_server", "server_margin_db", "status"):
+    for layer in LAYERS:
         one, other = getattr(expected, layer), getattr(actual, layer)
         assert one.tobytes() == other.tobytes(), layer
     assert expected.counts == actual.counts
@@ -372,7 +383,7 @@ def test_counts_tell_the_reasons_apart() -> None:
     assert (alone.status[40:] == OUT_OF_RANGE).all()
     assert (alone.best_server[:9] == -1).all()
     assert np.isnan(alone.received_signal_dbm[:9]).all()
-    assert alone.counts == coverage.CellCounts(
+    assert alone.counts == CellCounts(
         cells=ROWS * COLS,
         out_of_range=24 * COLS,
         in_range=36 * COLS,
@@ -412,12 +423,7 @@ def test_no_sectors_cover_nothing() -> None:
 def test_types_shapes_and_read_only() -> None:
     """The layers have the grid's shape and the agreed types, and cannot be changed."""
     actual = covered(*three_sectors())
-    for layer, dtype in (
-        ("received_signal_dbm", np.float32),
-        ("best_server", np.int16),
-        ("server_margin_db", np.float32),
-        ("status", np.uint8),
-    ):
+    for layer, dtype in LAYERS.items():
         array = getattr(actual, layer)
         assert array.shape == (ROWS, COLS)
         assert array.dtype == dtype
@@ -458,9 +464,12 @@ def test_one_thread_and_two_give_the_same_bytes() -> None:
 def test_plain_and_compiled_agree(monkeypatch: pytest.MonkeyPatch) -> None:
     """The kernels run as plain Python give the same layers."""
     compiled = covered(*three_sectors())
-    for name in ("_add_mast", "_add_sector", "_write_margins", "_status_of_two"):
-        monkeypatch.setattr(coverage, name, getattr(coverage, name).py_func)
-    monkeypatch.setattr(coverage, "prange", range)
+    for name, kernel in vars(kernels).items():
+        if isinstance(kernel, Dispatcher):
+            monkeypatch.setattr(kernels, name, kernel.py_func)
+    monkeypatch.setattr(kernels, "prange", range)
+    monkeypatch.setattr(layers, "add_mast", kernels.add_mast)
+    monkeypatch.setattr(layers, "finish", kernels.finish)
     plain = covered(*three_sectors())
     np.testing.assert_allclose(
         compiled.received_signal_dbm, plain.received_signal_dbm, rtol=0, atol=1e-4

@@ -42,6 +42,7 @@ class PathField:
     radius_m: float
     path_loss_db: NDArray[np.float32]  # NaN where not computed
     departure_elevation_deg: NDArray[np.float32]  # towards the cell, or the horizon if obstructed
+    fresnel_clearance_ratio: NDArray[np.float32]  # worst of the path; at most 1, negative: blocked
     status: NDArray[np.uint8]  # COMPUTED, OUT_OF_RANGE, NO_DATA or CROSSES_HOLE
 
     def departure_azimuth_deg(self) -> NDArray[np.float32]:
@@ -142,6 +143,7 @@ def path_field(
     )
     path_loss = np.full(shape, np.nan, dtype=np.float32)
     elevation = np.full(shape, np.nan, dtype=np.float32)
+    clearance = np.full(shape, np.nan, dtype=np.float32)
     status = np.full(shape, OUT_OF_RANGE, dtype=np.uint8)
     radials = 4 * (2 * reach + 1)
     edges = np.linspace(0, radials, _PORTIONS + 1).astype(int)
@@ -154,7 +156,7 @@ def path_field(
     if progress is not None:
         progress(_PORTIONS, _PORTIONS)
     _compute_own_cell(mast, link, ground, path_loss, elevation, status)
-    for array in (path_loss, elevation, status):
+    for array in (path_loss, elevation, clearance, status):
         array.flags.writeable = False
     return PathField(
         row_start=row_start,
@@ -170,6 +172,7 @@ def path_field(
         radius_m=float(radius_m),
         path_loss_db=path_loss,
         departure_elevation_deg=elevation,
+        fresnel_clearance_ratio=clearance,
         status=status,
     )
 
