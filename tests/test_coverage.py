@@ -9,7 +9,14 @@ import numpy as np
 import pytest
 from numba.core.dispatcher import Dispatcher
 
-from planner.antenna import GainTable, Isotropic, Pattern, Tr36814Sector, gain_table, mounted_gain_dbi
+from planner.antenna import (
+    GainTable,
+    Isotropic,
+    Pattern,
+    Tr36814Sector,
+    gain_table,
+    mounted_gain_dbi,
+)
 from planner.coverage import CellCounts, Coverage, combine, kernels, layers
 from planner.geodesy import LocalFrame
 from planner.network import Radio, Sector, Terminal
@@ -468,8 +475,8 @@ def test_plain_and_compiled_agree(monkeypatch: pytest.MonkeyPatch) -> None:
         if isinstance(kernel, Dispatcher):
             monkeypatch.setattr(kernels, name, kernel.py_func)
     monkeypatch.setattr(kernels, "prange", range)
-    monkeypatch.setattr(layers, "add_mast", kernels.add_mast)
-    monkeypatch.setattr(layers, "finish", kernels.finish)
+    for name in ("add_mast", "clear", "finish"):
+        monkeypatch.setattr(layers, name, getattr(kernels, name))
     plain = covered(*three_sectors())
     np.testing.assert_allclose(
         compiled.received_signal_dbm, plain.received_signal_dbm, rtol=0, atol=1e-4

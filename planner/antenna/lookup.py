@@ -28,21 +28,30 @@ BEND_REACH = 0.08  # of a beamwidth: bends may move so far between two sampled c
 SEAM_DEG = -90.0  # azimuth offset at which the table begins, and ends one turn later
 BINS_PER_QUARTER = 8192  # of a turn in azimuth; and of the sine of the elevation from 0 to 1
 
+# Packed so that one load brings two neighbours: a load from a table is what a cell costs most.
+LEVEL_STEPS_PER_DB = 256  # 16 bits a level, so down to 256 dB below the peak
+PLACE_STEPS_PER_NODE = 512  # 23 bits a place, for up to 16,384 nodes, and 9 bits a step
+
 # In float32, so that kernels stay in float32; a wider argument makes the result wider.
 _BINS = np.float32(BINS_PER_QUARTER)
 _ZERO, _TWO = np.float32(0.0), np.float32(2.0)
 _TINY = np.float32(1e-30)
+_DB_PER_STEP = np.float32(1.0 / LEVEL_STEPS_PER_DB)
+_NODES_PER_STEP = np.float32(1.0 / PLACE_STEPS_PER_NODE)
+_PLACE_BITS, _LEVEL_BITS = np.uint32(9), np.uint32(16)
+_STEP_MASK, _LEVEL_MASK = np.uint32(0x1FF), np.uint32(0xFFFF)
+_NOT_NEGATIVE = np.int32(0x7FFFFFFF)
 
 
 class GainArrays(NamedTuple):
-    """What a kernel needs of a :class:`GainTable`.
+    """What a kernel needs of a :class:`GainTable`."""
 
-    Each array has one entry more at the end of each axis, so that the last node has a neighbour.
-    """
-
-    gain_dbi: NDArray[np.float32]  # [elevation node, azimuth node]
-    azimuth_node: NDArray[np.float32]  # place between the nodes, at each bin's start
-    elevation_node: NDArray[np.float32]
+    levels: NDArray[
+        np.uint32
+    ]  # [elevation, azimuth node]: dB below the peak, here and to the right
+    azimuth_places: NDArray[np.uint32]  # of each bin: its start, counted in nodes, and its length
+    elevation_places: NDArray[np.uint32]
+    peak_dbi: float
     tilt_cosine: float  # of the mechanical downtilt
     tilt_sine: float
 
@@ -67,10 +76,11 @@ class GainTable:
 
 @inlined
 def vector_gain_dbi(
-    gain_dbi: NDArray[np.float32],
-    azimuth_nodes: int,
-    azimuth_node: NDArray[np.float32],
-    elevation_node: NDArray[np.float32],
+    levels: NDArray[np.uint32],
+    nodes_per_row: int,
+    azimuth_places: NDArray[np.uint32],
+    elevation_places: NDArray[np.uint32],
+    peak_dbi: Any,
     tilt_cosine: Any,
     tilt_sine: Any,
     ahead: Any,
@@ -79,9 +89,9 @@ def vector_gain_dbi(
 ) -> Any:
     """Gain towards a unit vector by bilinear interpolation in dB. [dBi]
 
-    The first five as in :class:`GainArrays`, but the gains flat, with the number of azimuth nodes
-    in a row. The vector is true to the horizon, ``ahead`` along the boresight's azimuth; none of it
-    may be NaN. float32 gives float32.
+    The arguments are those of :class:`GainArrays`, but the levels flat, with the number of azimuth
+    nodes in a row as int32. The vector is true to the horizon, ``ahead`` along the boresight's
+    azimuth; none of it may be NaN. float32 gives float32.
 
     The stand-in for the azimuth is the sine over the sum of the magnitudes of sine and cosine, from
     -1 at -90 degrees to 1 at 90, and mirrored behind up to 3 at 270. There are no branches, and
@@ -91,31 +101,31 @@ def vector_gain_dbi(
     above = ahead * tilt_sine + up * tilt_cosine
     turned = right / max(abs(along) + abs(right), _TINY)
     turned = turned if along >= _ZERO else _TWO - turned
-    across = turned * _BINS + _BINS
-    upwards = above * _BINS + _BINS
-    azimuth_bin = np.int32(across)
-    elevation_bin = np.int32(upwards)
-    azimuth_index = np.uint32(azimuth_bin & 0xFFFF)
-    elevation_index = np.uint32(elevation_bin & 0x7FFF)
-    left_node = azimuth_node[azimuth_index]
-    lower_node = elevation_node[elevation_index]
-    across = left_node + (across - np.float32(azimuth_bin)) * (
-        azimuth_node[np.uint32(azimuth_index + 1)] - left_node
-    )
-    upwards = lower_node + (upwards - np.float32(elevation_bin)) * (
-        elevation_node[np.uint32(elevation_index + 1)] - lower_node
-    )
-    left = np.int32(across)
-    lower = np.int32(upwards)
-    across -= np.float32(left)
-    upwards -= np.float32(lower)
-    first = np.uint32((lower * azimuth_nodes + left) & 0x7FFFFFFF)
-    second = np.uint32((lower * azimuth_nodes + left + azimuth_nodes) & 0x7FFFFFFF)
-    lower_left = gain_dbi[first]
-    upper_left = gain_dbi[second]
-    below = lower_left + across * (gain_dbi[np.uint32(first + 1)] - lower_left)
-    over = upper_left + across * (gain_dbi[np.uint32(second + 1)] - upper_left)
-    return below + upwards * (over - below)
+    left, across = _node_and_rest(azimuth_places, turned * _BINS + _BINS)
+    lower, upwards = _node_and_rest(elevation_places, above * _BINS + _BINS)
+    first = np.int32(np.int32(lower * nodes_per_row) + left)
+    below = _level_steps(levels[np.uint32(first & _NOT_NEGATIVE)], across)
+    over = _level_steps(levels[np.uint32(np.int32(first + nodes_per_row) & _NOT_NEGATIVE)], across)
+    return peak_dbi - (below + upwards * (over - below)) * _DB_PER_STEP
+
+
+@inlined
+def _node_and_rest(places: NDArray[np.uint32], bins: Any) -> tuple[Any, Any]:
+    """The node at or below a place that is given in bins, and how far on to the next it lies."""
+    whole_bins = np.int32(bins)
+    packed = places[np.uint32(whole_bins & _NOT_NEGATIVE)]
+    start = np.float32(np.int32(packed >> _PLACE_BITS))
+    length = np.float32(np.int32(packed & _STEP_MASK))
+    place = (start + (bins - np.float32(whole_bins)) * length) * _NODES_PER_STEP
+    node = np.int32(place)
+    return node, place - np.float32(node)
+
+
+@inlined
+def _level_steps(packed: int, across: Any) -> Any:
+    """Between a level and its neighbour to the right, in steps."""
+    left = np.float32(np.int32(packed >> _LEVEL_BITS))
+    return left + across * (np.float32(np.int32(packed & _LEVEL_MASK)) - left)
 
 
 @scalar
@@ -130,10 +140,11 @@ def table_gain_dbi(arrays: GainArrays, azimuth_offset_deg: float, elevation_deg:
     offset_rad = math.radians(azimuth_offset_deg - 360.0 * math.floor(azimuth_offset_deg / 360.0))
     elevation_rad = math.radians(elevation_deg)
     return vector_gain_dbi(
-        arrays.gain_dbi.ravel(),
-        arrays.gain_dbi.shape[1],
-        arrays.azimuth_node,
-        arrays.elevation_node,
+        arrays.levels.ravel(),
+        np.int32(arrays.levels.shape[1]),
+        arrays.azimuth_places,
+        arrays.elevation_places,
+        arrays.peak_dbi,
         arrays.tilt_cosine,
         arrays.tilt_sine,
         math.cos(elevation_rad) * math.cos(offset_rad),
@@ -183,21 +194,30 @@ def gain_table(
         mechanical_downtilt_deg=float(mechanical_downtilt_deg),
         electrical_downtilt_deg=float(electrical_downtilt_deg),
         arrays=GainArrays(
-            gain_dbi=np.pad(gain_dbi, (0, 1), mode="edge").astype(np.float32),
-            azimuth_node=_places(offsets, azimuths),
-            elevation_node=_places(np.degrees(np.arcsin(sines)), elevations),
+            levels=_packed_levels(gain_dbi),
+            azimuth_places=_packed_places(offsets, azimuths),
+            elevation_places=_packed_places(np.degrees(np.arcsin(sines)), elevations),
+            peak_dbi=float(gain_dbi.max()),
             tilt_cosine=math.cos(math.radians(mechanical_downtilt_deg)),
             tilt_sine=math.sin(math.radians(mechanical_downtilt_deg)),
         ),
     )
 
 
-def _places(
+def _packed_levels(gain_dbi: NDArray[np.float64]) -> NDArray[np.uint32]:
+    """Levels below the peak in whole steps, each with its neighbour to the right; ends repeated."""
+    steps = np.round((gain_dbi.max() - gain_dbi) * LEVEL_STEPS_PER_DB)
+    steps = np.pad(np.minimum(steps, 65535.0).astype(np.uint32), ((0, 1), (0, 2)), mode="edge")
+    return steps[:, :-1] << 16 | steps[:, 1:]
+
+
+def _packed_places(
     angles_deg: NDArray[np.float64], nodes_deg: NDArray[np.float64]
-) -> NDArray[np.float32]:
-    """Where angles lie between the nodes, counted in nodes, and the last of them once more."""
+) -> NDArray[np.uint32]:
+    """Where the bins that begin at given angles lie between the nodes, and how long they are."""
     places = np.interp(angles_deg, nodes_deg, np.arange(float(nodes_deg.size)))
-    return np.append(places, places[-1]).astype(np.float32)
+    steps = np.round(places * PLACE_STEPS_PER_NODE).astype(np.uint32)
+    return steps << 9 | np.diff(steps, append=steps[-1])
 
 
 def _nodes(

@@ -17,7 +17,7 @@ from numpy.typing import NDArray
 from planner.antenna.lookup import vector_gain_dbi
 from planner.physics._jit import inlined, parallel
 from planner.physics.link import eirp_dbm_scalar, received_signal_dbm_scalar
-from planner.sweep import COMPUTED
+from planner.sweep import COMPUTED, OUT_OF_RANGE
 
 NO_PATH = -1  # best_server: no mast has a computed path to the cell
 NONE_ABOVE_THRESHOLD = 0  # best_server; sectors count from 1
@@ -25,7 +25,7 @@ NONE_ABOVE_THRESHOLD = 0  # best_server; sectors count from 1
 STATUS_CODES = 4  # of a cell's status: COMPUTED, OUT_OF_RANGE, NO_DATA, CROSSES_HOLE
 
 _CELLS = 512  # of a piece
-_ROWS = 16  # of a thread's portion
+_ROWS = 4  # of a thread's portion
 
 _NAN = np.float32(np.nan)
 _ZERO, _ONE = np.float32(0.0), np.float32(1.0)
@@ -60,14 +60,14 @@ class MastArrays(NamedTuple):
 
 
 class SectorArrays(NamedTuple):
-    """The sectors of one mast; the first index of each array is the sector, but for ``gain_dbi``."""
+    """The sectors of one mast; the first index of each array is the sector, but for ``levels``."""
 
-    gain_dbi: NDArray[np.float32]  # all tables one after the other, flat
+    levels: NDArray[np.uint32]  # all tables one after the other, flat
     first: NDArray[np.int64]  # where each sector's table starts, and where the last ends
-    azimuth_nodes: NDArray[np.int32]
-    azimuth_node: NDArray[np.float32]
-    elevation_node: NDArray[np.float32]
-    tilt: NDArray[np.float32]  # cosine and sine
+    nodes_per_row: NDArray[np.int32]
+    azimuth_places: NDArray[np.uint32]
+    elevation_places: NDArray[np.uint32]
+    mounted: NDArray[np.float32]  # peak gain, cosine and sine of the mechanical tilt
     boresight: NDArray[np.float32]  # cosine and sine of its azimuth on the grid at the mast
     budget: NDArray[np.float32]  # power, feeder loss, terminal gain, its feeder loss, threshold
     number: NDArray[np.int16]  # in plan order, from 1
@@ -132,9 +132,7 @@ def _directions(
         up[i] = quarters * (
             _SIN_0 + square * (_SIN_1 + square * (_SIN_2 + square * (_SIN_3 + square * _SIN_4)))
         )
-        level = _COS_0 + square * (
-            _COS_1 + square * (_COS_2 + square * (_COS_3 + square * _COS_4))
-        )
+        level = _COS_0 + square * (_COS_1 + square * (_COS_2 + square * (_COS_3 + square * _COS_4)))
         level /= math.sqrt(east_m[i] * east_m[i] + north_m * north_m)
         turn_rad = bend_east * east_m[i] + bend_north * north_m
         north[i] = level * (north_m - turn_rad * east_m[i])
@@ -147,25 +145,26 @@ def _signals(
     north: NDArray[np.float32],
     east: NDArray[np.float32],
     up: NDArray[np.float32],
-    gain_dbi: NDArray[np.float32],
-    azimuth_nodes: int,
-    azimuth_node: NDArray[np.float32],
-    elevation_node: NDArray[np.float32],
-    tilt: NDArray[np.float32],
+    levels: NDArray[np.uint32],
+    nodes_per_row: int,
+    azimuth_places: NDArray[np.uint32],
+    elevation_places: NDArray[np.uint32],
+    mounted: NDArray[np.float32],
     boresight: NDArray[np.float32],
     budget: NDArray[np.float32],
     signal_dbm: NDArray[np.float32],
 ) -> None:
     """One sector's received signal, written into the last."""
-    tilt_cosine, tilt_sine = tilt
+    peak_dbi, tilt_cosine, tilt_sine = mounted
     boresight_north, boresight_east = boresight
     power_dbm, feeder_loss_db, terminal_gain_dbi, terminal_feeder_loss_db = budget[:4]
     for i in range(signal_dbm.size):
         toward_dbi = vector_gain_dbi(
-            gain_dbi,
-            azimuth_nodes,
-            azimuth_node,
-            elevation_node,
+            levels,
+            nodes_per_row,
+            azimuth_places,
+            elevation_places,
+            peak_dbi,
             tilt_cosine,
             tilt_sine,
             north[i] * boresight_north + east[i] * boresight_east,
@@ -250,11 +249,11 @@ def _add_rows(
                     north,
                     east,
                     up,
-                    sectors.gain_dbi[sectors.first[sector] : sectors.first[sector + 1]],
-                    sectors.azimuth_nodes[sector],
-                    sectors.azimuth_node[sector],
-                    sectors.elevation_node[sector],
-                    sectors.tilt[sector],
+                    sectors.levels[sectors.first[sector] : sectors.first[sector + 1]],
+                    sectors.nodes_per_row[sector],
+                    sectors.azimuth_places[sector],
+                    sectors.elevation_places[sector],
+                    sectors.mounted[sector],
                     sectors.boresight[sector],
                     sectors.budget[sector],
                     signal_dbm,
@@ -267,6 +266,22 @@ def _add_rows(
                     layers.other_signal_dbm[out, left:right],
                     layers.best_server[out, left:right],
                 )
+
+
+@parallel
+def clear(layers: Layers) -> None:
+    """Fill with what holds where no mast reaches."""
+    for row in prange(layers.status.shape[0]):
+        _clear_row(row, layers)
+
+
+@inlined
+def _clear_row(row: int, layers: Layers) -> None:
+    layers.best_signal_dbm[row] = _NOTHING
+    layers.other_signal_dbm[row] = _NOTHING
+    layers.best_server[row] = NO_PATH
+    layers.fresnel_clearance_ratio[row] = _NOTHING
+    layers.status[row] = OUT_OF_RANGE
 
 
 @parallel

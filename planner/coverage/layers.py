@@ -22,6 +22,7 @@ from planner.coverage.kernels import (
     MastArrays,
     SectorArrays,
     add_mast,
+    clear,
     finish,
 )
 from planner.geodesy import LocalFrame
@@ -126,26 +127,23 @@ def combine(
         raise ValueError(f"rows {start} to {stop} are none of a grid of {grid_rows} rows")
     shape = (stop - start, grid_cols)
     layers = Layers(
-        best_signal_dbm=np.full(shape, -np.inf, dtype=np.float32),
-        other_signal_dbm=np.full(shape, -np.inf, dtype=np.float32),
-        best_server=np.full(shape, NO_PATH, dtype=np.int16),
-        fresnel_clearance_ratio=np.full(shape, -np.inf, dtype=np.float32),
-        status=np.full(shape, OUT_OF_RANGE, dtype=np.uint8),
+        best_signal_dbm=np.empty(shape, dtype=np.float32),
+        other_signal_dbm=np.empty(shape, dtype=np.float32),
+        best_server=np.empty(shape, dtype=np.int16),
+        fresnel_clearance_ratio=np.empty(shape, dtype=np.float32),
+        status=np.empty(shape, dtype=np.uint8),
     )
+    clear(layers)
     numbered = list(enumerate(items, start=1))
-    for _, same_field in groupby(numbered, key=lambda item: id(item[1][0])):
-        group = list(same_field)
-        field = group[0][1][0]
+    for _, neighbours in groupby(numbered, key=lambda item: id(item[1][0])):
+        sectors = [(number, *item) for number, item in neighbours]
+        field = sectors[0][1]
         _check_window(field, (grid_rows, grid_cols))
         first = max(field.row_start, start)
         last = min(field.row_start + field.path_loss_db.shape[0], stop)
         if first < last:
-            sectors = [(number, sector, table) for number, (_, sector, table) in group]
-            add_mast(
-                _mast_arrays(field, first, last, start),
-                _sector_arrays(field.frame, sectors, terminal),
-                layers,
-            )
+            mast = _mast_arrays(field, first, last, start)
+            add_mast(mast, _sector_arrays(sectors, terminal), layers)
     cells = np.zeros((stop - start, len(items) + 2, STATUS_CODES), dtype=np.int64)
     finish(layers, cells)
     for array in layers:
@@ -209,20 +207,22 @@ def _bend_rad_per_m(frame: LocalFrame) -> NDArray[np.float32]:
 
 
 def _sector_arrays(
-    frame: LocalFrame, sectors: Sequence[tuple[int, Sector, GainTable]], terminal: Terminal
+    sectors: Sequence[tuple[int, PathField, Sector, GainTable]], terminal: Terminal
 ) -> SectorArrays:
     """The numbered sectors of one mast for the kernel."""
-    arrays = [table.arrays for _, _, table in sectors]
+    arrays = [table.arrays for _, _, _, table in sectors]
     boresights_rad = np.radians(
-        [float(table.azimuth_deg) - frame.convergence_deg for _, _, table in sectors]
+        [table.azimuth_deg - field.frame.convergence_deg for _, field, _, table in sectors]
     )
     return SectorArrays(
-        gain_dbi=np.concatenate([own.gain_dbi.ravel() for own in arrays]),
-        first=np.cumsum([0, *(own.gain_dbi.size for own in arrays)]),
-        azimuth_nodes=np.array([own.gain_dbi.shape[1] for own in arrays], dtype=np.int32),
-        azimuth_node=np.stack([own.azimuth_node for own in arrays]),
-        elevation_node=np.stack([own.elevation_node for own in arrays]),
-        tilt=np.array([(own.tilt_cosine, own.tilt_sine) for own in arrays], dtype=np.float32),
+        levels=np.concatenate([own.levels.ravel() for own in arrays]),
+        first=np.cumsum([0, *(own.levels.size for own in arrays)]),
+        nodes_per_row=np.array([own.levels.shape[1] for own in arrays], dtype=np.int32),
+        azimuth_places=np.stack([own.azimuth_places for own in arrays]),
+        elevation_places=np.stack([own.elevation_places for own in arrays]),
+        mounted=np.array(
+            [(own.peak_dbi, own.tilt_cosine, own.tilt_sine) for own in arrays], dtype=np.float32
+        ),
         boresight=np.stack((np.cos(boresights_rad), np.sin(boresights_rad)), axis=-1).astype(
             np.float32
         ),
@@ -235,11 +235,11 @@ def _sector_arrays(
                     terminal.feeder_loss_db,
                     sector.radio.service_threshold_dbm,
                 )
-                for _, sector, _ in sectors
+                for _, _, sector, _ in sectors
             ],
             dtype=np.float32,
         ),
-        number=np.array([number for number, _, _ in sectors], dtype=np.int16),
+        number=np.array([number for number, _, _, _ in sectors], dtype=np.int16),
     )
 
 

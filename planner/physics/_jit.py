@@ -15,9 +15,7 @@ from numba import vectorize as numba_vectorize
 
 scalar = njit(cache=True, error_model="numpy", nogil=True)
 parallel = njit(cache=True, error_model="numpy", nogil=True, parallel=True)
-inlined = njit(
-    cache=True, error_model="numpy", nogil=True, forceinline=True, fastmath={"contract"}
-)
+inlined = njit(cache=True, error_model="numpy", nogil=True, forceinline=True, fastmath={"contract"})
 
 
 def over_arrays(scalar_function: Any) -> Callable[..., Any]:
