@@ -9,7 +9,7 @@ over a stand-in for the azimuth that takes one division, see :func:`vector_gain_
 
 import math
 from dataclasses import dataclass
-from typing import Any, Literal, NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -260,30 +260,50 @@ def _allowed_step_deg(
     ``cuts_dbi`` holds a sample at the start of each bin along its last axis. A straight line over
     a step leaves the curve by half the curve's second difference over half steps.
     """
-    mode: Literal["wrap", "edge"] = "wrap" if around else "edge"
-    deep = cuts_dbi < cuts_dbi.max() - DEPTH_DB
-    wanted_db = np.where(deep, DEEP_ERROR_DB, WANTED_ERROR_DB)
+    deep_dbi = cuts_dbi.max() - DEPTH_DB
     allowed = np.full(cuts_dbi.shape[-1], STEPS_DEG[-1])
     for step_deg in sorted(STEPS_DEG)[1:]:
         half = round(0.5 * step_deg * BINS_PER_DEG)
-        wide = np.pad(cuts_dbi, ((0, 0), (half, half)), mode=mode)
-        error_db = np.abs(0.5 * (wide[:, : -2 * half] + wide[:, 2 * half :]) - cuts_dbi)
-        bad = (error_db > wanted_db).any(axis=0)
+        bad = np.zeros(cuts_dbi.shape[-1], dtype=np.bool_)
+        _mark_bent(cuts_dbi, deep_dbi, half, around, bad)
         reach = half + math.ceil(reach_deg * BINS_PER_DEG)
         bad = maximum_filter1d(bad, 2 * reach + 1, mode="wrap" if around else "nearest")
         allowed[~bad & (allowed == 0.5 * step_deg)] = step_deg
     return allowed if around else allowed[:-1]
 
 
+@scalar
+def _mark_bent(
+    cuts_dbi: NDArray[np.float64],
+    deep_dbi: float,
+    half: int,
+    around: bool,
+    bent: NDArray[np.bool_],
+) -> None:
+    """Mark the bins where some cut leaves the line between its samples ``half`` bins away."""
+    cuts, bins = cuts_dbi.shape
+    for cut in range(cuts):
+        for middle in range(bins):
+            before, after = middle - half, middle + half
+            if around:
+                before, after = before % bins, after % bins
+            else:
+                before, after = max(before, 0), min(after, bins - 1)
+            here_dbi = cuts_dbi[cut, middle]
+            error_db = abs(0.5 * (cuts_dbi[cut, before] + cuts_dbi[cut, after]) - here_dbi)
+            if error_db > (DEEP_ERROR_DB if here_dbi < deep_dbi else WANTED_ERROR_DB):
+                bent[middle] = True
+
+
 def _placed(start_deg: float, allowed_deg: NDArray[np.float64]) -> NDArray[np.float64]:
     """Nodes from the start on, each step the largest that fits its place and all of its bins."""
+    fits = {}  # by step in bins: whether the step may be taken at each of its multiples
+    for step_deg in STEPS_DEG:
+        bins = round(step_deg * BINS_PER_DEG)
+        fits[bins] = (allowed_deg.reshape(-1, bins).min(axis=1) >= step_deg).tolist()
     places = [0]  # in bins
     while places[-1] < allowed_deg.size:
         place = places[-1]
-        for step_deg in STEPS_DEG:
-            bins = max(round(step_deg * BINS_PER_DEG), 1)
-            fits = place % bins == 0 and allowed_deg[place : place + bins].min() >= step_deg
-            if fits or bins == 1:
-                places.append(place + bins)
-                break
+        step = next(bins for bins in fits if place % bins == 0 and fits[bins][place // bins])
+        places.append(place + step)
     return start_deg + np.array(places) / BINS_PER_DEG
