@@ -2,9 +2,10 @@
 
 The table itself is in the antenna's own frame, so one table serves every azimuth. Its nodes lie on
 multiples of 1/32 degree, close together where the pattern bends and far apart where it is
-straight. Directions come as unit vectors, which a mechanical tilt merely turns. No angle is
-computed from them: the places between the nodes are tabulated over the sine of the elevation and
-over a stand-in for the azimuth that takes one division, see :func:`vector_gain_dbi`.
+straight; about corners also halfway between. Directions come as unit vectors, which a mechanical
+tilt merely turns. No angle is computed from them: the places between the nodes are tabulated over
+the sine of the elevation and over a stand-in for the azimuth that takes one division, see
+:func:`vector_gain_dbi`.
 """
 
 import math
@@ -223,7 +224,7 @@ def _packed_places(
 def _nodes(
     pattern: Pattern, electrical_downtilt_deg: float
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Azimuth offsets -90 to 270 and elevations -90 to 90 between which the gain is nearly straight.
+    """Azimuth offsets -90 to 270 and elevations -90 to 90 with a nearly straight gain between.
 
     Found from cuts through the pattern, dense where formulas join their pieces: bends may run
     slantwise through the beam.
@@ -246,10 +247,24 @@ def _nodes(
         np.clip(beam_deg + np.concatenate((heights, -heights[1::4])), -90.0, 90.0)[:, np.newaxis],
         electrical_downtilt_deg=electrical_downtilt_deg,
     )
-    return (
-        _placed(SEAM_DEG, _allowed_step_deg(level, BEND_REACH * width_deg, around=True)),
-        _placed(-90.0, _allowed_step_deg(upright, BEND_REACH * height_deg, around=False)),
-    )
+    around = _placed(SEAM_DEG, _allowed_step_deg(level, BEND_REACH * width_deg, around=True))
+    upwards = _placed(-90.0, _allowed_step_deg(upright, BEND_REACH * height_deg, around=False))
+    return _with_corners(around, level), _with_corners(upwards, upright)
+
+
+def _with_corners(
+    nodes_deg: NDArray[np.float64], cuts_dbi: NDArray[np.float64]
+) -> NDArray[np.float64]:
+    """The nodes, and half a bin off each bin where a cut has a corner, more of them.
+
+    A corner in the middle between two samples leaves the line between them by half of what the
+    second difference at either is.
+    """
+    bends_db = np.abs(cuts_dbi[:, :-2] - 2.0 * cuts_dbi[:, 1:-1] + cuts_dbi[:, 2:])
+    bends_db[cuts_dbi[:, 1:-1] < cuts_dbi.max() - DEPTH_DB] = 0.0
+    corners = np.flatnonzero((bends_db > 2.0 * WANTED_ERROR_DB).any(axis=0)) + 1
+    halfway = np.concatenate((corners - 0.5, corners + 0.5)) / BINS_PER_DEG + nodes_deg[0]
+    return np.union1d(nodes_deg, halfway)
 
 
 def _allowed_step_deg(

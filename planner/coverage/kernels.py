@@ -44,6 +44,8 @@ _COS_0, _COS_1, _COS_2, _COS_3, _COS_4 = (
     for value in (0.999999953, -1.23369821, 0.25365071, -0.0208105714, 0.000858162543)
 )
 
+_LEAST_LEVEL = np.float32(1e-12)  # so that straight up and down an azimuth is left, as in formulas
+
 
 class MastArrays(NamedTuple):
     """A path field's rows within a band, and where its cells lie on the grid."""
@@ -133,6 +135,7 @@ def _directions(
             _SIN_0 + square * (_SIN_1 + square * (_SIN_2 + square * (_SIN_3 + square * _SIN_4)))
         )
         level = _COS_0 + square * (_COS_1 + square * (_COS_2 + square * (_COS_3 + square * _COS_4)))
+        level = max(level, _LEAST_LEVEL)
         level /= math.sqrt(east_m[i] * east_m[i] + north_m * north_m)
         turn_rad = bend_east * east_m[i] + bend_north * north_m
         north[i] = level * (north_m - turn_rad * east_m[i])
