@@ -78,7 +78,7 @@ class GainTable:
 @inlined
 def vector_gain_dbi(
     levels: NDArray[np.uint32],
-    nodes_per_row: int,
+    nodes_per_row: Any,
     azimuth_places: NDArray[np.uint32],
     elevation_places: NDArray[np.uint32],
     peak_dbi: Any,
