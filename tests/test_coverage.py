@@ -680,3 +680,23 @@ def test_line_of_sight_classes() -> None:
     assert actual.dtype == np.uint8
     assert [expected] == actual.tolist()
     assert sorted(set(expected)) == [0, 1, 2, 3, 4]
+
+
+def test_unit_vectors_at_every_elevation() -> None:
+    """From nadir to zenith the kernel's vectors are exact to a millionth."""
+    elevation_deg = np.linspace(-90.0, 90.0, 2001, dtype=np.float32)
+    size, north_m = elevation_deg.size, np.float32(-750.0)
+    east_m = np.linspace(-2000.0, 30_000.0, size, dtype=np.float32)
+    loss_db, north, east, up = np.empty((4, size), dtype=np.float32)
+    kernels._directions(
+        east_m, elevation_deg, east_m, north_m, np.float32(0.0), np.float32(0.0),
+        loss_db, north, east, up,
+    )  # fmt: skip
+    elevation_rad = np.radians(elevation_deg.astype(float))
+    azimuth_rad = np.arctan2(east_m.astype(float), float(north_m))
+    np.testing.assert_allclose(np.sin(elevation_rad), up, rtol=0, atol=1e-6)
+    np.testing.assert_allclose(
+        np.cos(elevation_rad) * np.cos(azimuth_rad), north, rtol=0, atol=1e-6
+    )
+    np.testing.assert_allclose(np.cos(elevation_rad) * np.sin(azimuth_rad), east, rtol=0, atol=1e-6)
+    assert loss_db.tobytes() == east_m.tobytes()
