@@ -16,7 +16,12 @@ from planner.antenna import (
     mounted_gain_dbi,
     two_cut_pattern,
 )
-from planner.antenna.lookup import GainArrays, table_gain_dbi
+from planner.antenna.lookup import (
+    BINS_PER_QUARTER,
+    PLACE_STEPS_PER_NODE,
+    GainArrays,
+    table_gain_dbi,
+)
 from planner.physics._jit import parallel
 
 
@@ -169,16 +174,21 @@ def test_nan_and_directions_that_do_not_exist() -> None:
         assert np.isnan(actual).tolist() == [True, True, True, True, False, False]
 
 
-def test_table_is_read_only_float32() -> None:
-    """The table holds float32 that cannot be changed, with nodes at both ends of the axes."""
+def test_table_is_read_only_and_whole() -> None:
+    """The arrays cannot be changed, and the places run from the first node to the last."""
     arrays = gain_table(PATTERNS["TR 36.814"][0], azimuth_deg=0.0).arrays
-    assert arrays.gain_dbi.dtype == np.float32
-    assert arrays.gain_dbi.shape == (arrays.elevation_deg.size, arrays.azimuth_offset_deg.size)
-    assert (arrays.azimuth_offset_deg[0], arrays.azimuth_offset_deg[-1]) == (0.0, 360.0)
-    assert (arrays.elevation_deg[0], arrays.elevation_deg[-1]) == (-90.0, 90.0)
-    assert (arrays.azimuth_bin_node.size, arrays.elevation_bin_node.size) == (360 * 32, 180 * 32)
-    with pytest.raises(ValueError, match="read-only"):
-        arrays.gain_dbi[0, 0] = 0.0
+    rows, cols = arrays.levels.shape
+    for places, bins, last_node in (
+        (arrays.azimuth_places, 4 * BINS_PER_QUARTER, cols - 2),
+        (arrays.elevation_places, 2 * BINS_PER_QUARTER, rows - 2),
+    ):
+        assert places.shape == (bins + 1,)
+        assert places[0] >> 9 == 0
+        assert places[-1] == last_node * PLACE_STEPS_PER_NODE << 9
+    assert (arrays.levels >> 16).min() == 0
+    for array in arrays[:3]:
+        with pytest.raises(ValueError, match="read-only"):
+            array[0] = 0
 
 
 def test_plain_and_compiled_agree() -> None:

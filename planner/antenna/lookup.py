@@ -2,42 +2,59 @@
 
 The table itself is in the antenna's own frame, so one table serves every azimuth. Its nodes lie on
 multiples of 1/32 degree, close together where the pattern bends and far apart where it is
-straight; an array of 1/32 degree bins leads from an angle to its nodes. A mechanical tilt is a
-second, coarse table: by how much it shifts the azimuth offset and the elevation of each direction.
-That shift is smooth, so one degree is fine enough; far from the horizon it is computed instead.
+straight; about corners also halfway between. Directions come as unit vectors, which a mechanical
+tilt merely turns. No angle is computed from them: the places between the nodes are tabulated over
+the sine of the elevation and over a stand-in for the azimuth that takes one division, see
+:func:`vector_gain_dbi`.
 """
 
 import math
 from dataclasses import dataclass
-from typing import Literal, NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.ndimage import maximum_filter1d
 
-from planner.antenna.mounting import antenna_direction_deg, tilted_direction_deg
+from planner.antenna.mounting import checked_tilt
 from planner.antenna.pattern import Pattern
-from planner.physics._jit import scalar
+from planner.physics._jit import inlined, scalar
 
 BINS_PER_DEG = 32
 STEPS_DEG = (1.0, 0.5, 0.25, 0.125, 0.0625, 0.03125)  # powers of two: sums of them are exact
 WANTED_ERROR_DB = 0.015  # of each axis, within DEPTH_DB of the peak
 DEEP_ERROR_DB = 0.5  # of each axis, further below the peak
 DEPTH_DB = 32.0
-SHIFT_REACH_DEG = 60.0  # elevation and tilt together, up to which the table of shifts is used
 BEND_REACH = 0.08  # of a beamwidth: bends may move so far between two sampled cuts
+SEAM_DEG = -90.0  # azimuth offset at which the table begins, and ends one turn later
+BINS_PER_QUARTER = 8192  # of a turn in azimuth; and of the sine of the elevation from 0 to 1
+
+# Packed so that one load brings two neighbours: a load from a table is what a cell costs most.
+LEVEL_STEPS_PER_DB = 256  # 16 bits a level, so down to 256 dB below the peak
+PLACE_STEPS_PER_NODE = 512  # 23 bits a place, for up to 16,384 nodes, and 9 bits a step
+
+# In float32, so that kernels stay in float32; a wider argument makes the result wider.
+_BINS = np.float32(BINS_PER_QUARTER)
+_ZERO, _TWO = np.float32(0.0), np.float32(2.0)
+_TINY = np.float32(1e-30)
+_DB_PER_STEP = np.float32(1.0 / LEVEL_STEPS_PER_DB)
+_NODES_PER_STEP = np.float32(1.0 / PLACE_STEPS_PER_NODE)
+_PLACE_BITS, _LEVEL_BITS = np.uint32(9), np.uint32(16)
+_STEP_MASK, _LEVEL_MASK = np.uint32(0x1FF), np.uint32(0xFFFF)
+_NOT_NEGATIVE = np.int32(0x7FFFFFFF)
 
 
 class GainArrays(NamedTuple):
     """What a kernel needs of a :class:`GainTable`."""
 
-    gain_dbi: NDArray[np.float32]  # [elevation node, azimuth node]
-    azimuth_offset_deg: NDArray[np.float64]  # nodes, from 0 to 360
-    elevation_deg: NDArray[np.float64]  # nodes, from -90 to 90
-    azimuth_bin_node: NDArray[np.int32]  # for each bin the node at or below it
-    elevation_bin_node: NDArray[np.int32]
-    shift_deg: NDArray[np.float32]  # [elevation + 60, azimuth offset, (azimuth, elevation)]
-    mechanical_downtilt_deg: float
+    levels: NDArray[
+        np.uint32
+    ]  # [elevation, azimuth node]: dB below the peak, here and to the right
+    azimuth_places: NDArray[np.uint32]  # of each bin: its start, counted in nodes, and its length
+    elevation_places: NDArray[np.uint32]
+    peak_dbi: float
+    tilt_cosine: float  # of the mechanical downtilt
+    tilt_sine: float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -58,6 +75,60 @@ class GainTable:
                 array.setflags(write=False)
 
 
+@inlined
+def vector_gain_dbi(
+    levels: NDArray[np.uint32],
+    nodes_per_row: Any,
+    azimuth_places: NDArray[np.uint32],
+    elevation_places: NDArray[np.uint32],
+    peak_dbi: Any,
+    tilt_cosine: Any,
+    tilt_sine: Any,
+    ahead: Any,
+    right: Any,
+    up: Any,
+) -> Any:
+    """Gain towards a unit vector by bilinear interpolation in dB. [dBi]
+
+    The arguments are those of :class:`GainArrays`, but the levels flat, with the number of azimuth
+    nodes in a row as int32. The vector is true to the horizon, ``ahead`` along the boresight's
+    azimuth; none of it may be NaN. float32 gives float32.
+
+    The stand-in for the azimuth is the sine over the sum of the magnitudes of sine and cosine, from
+    -1 at -90 degrees to 1 at 90, and mirrored behind up to 3 at 270. There are no branches, and
+    the masks say that an index is not negative: so the compiler can do many cells at once.
+    """
+    along = ahead * tilt_cosine - up * tilt_sine
+    above = ahead * tilt_sine + up * tilt_cosine
+    turned = right / max(abs(along) + abs(right), _TINY)
+    turned = turned if along >= _ZERO else _TWO - turned
+    left, across = _node_and_rest(azimuth_places, turned * _BINS + _BINS)
+    lower, upwards = _node_and_rest(elevation_places, above * _BINS + _BINS)
+    first = np.int32(np.int32(lower * nodes_per_row) + left)
+    below = _level_steps(levels[np.uint32(first & _NOT_NEGATIVE)], across)
+    over = _level_steps(levels[np.uint32(np.int32(first + nodes_per_row) & _NOT_NEGATIVE)], across)
+    return peak_dbi - (below + upwards * (over - below)) * _DB_PER_STEP
+
+
+@inlined
+def _node_and_rest(places: NDArray[np.uint32], bins: Any) -> tuple[Any, Any]:
+    """The node at or below a place that is given in bins, and how far on to the next it lies."""
+    whole_bins = np.int32(bins)
+    packed = places[np.uint32(whole_bins & _NOT_NEGATIVE)]
+    start = np.float32(np.int32(packed >> _PLACE_BITS))
+    length = np.float32(np.int32(packed & _STEP_MASK))
+    place = (start + (bins - np.float32(whole_bins)) * length) * _NODES_PER_STEP
+    node = np.int32(place)
+    return node, place - np.float32(node)
+
+
+@inlined
+def _level_steps(packed: int, across: Any) -> Any:
+    """Between a level and its neighbour to the right, in steps."""
+    left = np.float32(np.int32(packed >> _LEVEL_BITS))
+    return left + across * (np.float32(np.int32(packed & _LEVEL_MASK)) - left)
+
+
 @scalar
 def table_gain_dbi(arrays: GainArrays, azimuth_offset_deg: float, elevation_deg: float) -> float:
     """Gain from a table by bilinear interpolation in dB; NaN where an angle is NaN. [dBi]
@@ -67,48 +138,20 @@ def table_gain_dbi(arrays: GainArrays, azimuth_offset_deg: float, elevation_deg:
     """
     if not abs(elevation_deg) <= 90.0 or not abs(azimuth_offset_deg) < math.inf:
         return math.nan
-    offset_deg = azimuth_offset_deg - 360.0 * math.floor(azimuth_offset_deg / 360.0)
-    tilt_deg = arrays.mechanical_downtilt_deg
-    if tilt_deg != 0.0:
-        if abs(elevation_deg) + abs(tilt_deg) < SHIFT_REACH_DEG:
-            shift = arrays.shift_deg
-            row = int(elevation_deg + SHIFT_REACH_DEG)
-            col = min(int(offset_deg), 359)
-            upwards = elevation_deg + SHIFT_REACH_DEG - row
-            across = offset_deg - col
-            lower_left = (1.0 - upwards) * (1.0 - across)
-            lower_right = (1.0 - upwards) * across
-            upper_left = upwards * (1.0 - across)
-            upper_right = upwards * across
-            offset_deg += (
-                lower_left * shift[row, col, 0]
-                + lower_right * shift[row, col + 1, 0]
-                + upper_left * shift[row + 1, col, 0]
-                + upper_right * shift[row + 1, col + 1, 0]
-            )
-            elevation_deg += (
-                lower_left * shift[row, col, 1]
-                + lower_right * shift[row, col + 1, 1]
-                + upper_left * shift[row + 1, col, 1]
-                + upper_right * shift[row + 1, col + 1, 1]
-            )
-        else:
-            offset_deg, elevation_deg = tilted_direction_deg(offset_deg, elevation_deg, tilt_deg)
-        offset_deg -= 360.0 * math.floor(offset_deg / 360.0)
-    azimuth_bin = min(int(offset_deg * BINS_PER_DEG), arrays.azimuth_bin_node.size - 1)
-    elevation_bin = min(
-        int((elevation_deg + 90.0) * BINS_PER_DEG), arrays.elevation_bin_node.size - 1
+    offset_rad = math.radians(azimuth_offset_deg - 360.0 * math.floor(azimuth_offset_deg / 360.0))
+    elevation_rad = math.radians(elevation_deg)
+    return vector_gain_dbi(
+        arrays.levels.ravel(),
+        np.int32(arrays.levels.shape[1]),
+        arrays.azimuth_places,
+        arrays.elevation_places,
+        arrays.peak_dbi,
+        arrays.tilt_cosine,
+        arrays.tilt_sine,
+        math.cos(elevation_rad) * math.cos(offset_rad),
+        math.cos(elevation_rad) * math.sin(offset_rad),
+        math.sin(elevation_rad),
     )
-    left = arrays.azimuth_bin_node[azimuth_bin]
-    lower = arrays.elevation_bin_node[elevation_bin]
-    left_deg = arrays.azimuth_offset_deg[left]
-    lower_deg = arrays.elevation_deg[lower]
-    across = (offset_deg - left_deg) / (arrays.azimuth_offset_deg[left + 1] - left_deg)
-    upwards = (elevation_deg - lower_deg) / (arrays.elevation_deg[lower + 1] - lower_deg)
-    table = arrays.gain_dbi
-    below = table[lower, left] + across * (table[lower, left + 1] - table[lower, left])
-    above = table[lower + 1, left] + across * (table[lower + 1, left + 1] - table[lower + 1, left])
-    return below + upwards * (above - below)
 
 
 def gain_table(
@@ -135,45 +178,53 @@ def gain_table(
     there the step is drawn out over 1/32 degree. At the antenna's own zenith and nadir, where a
     gain may depend on an azimuth that has no meaning there, nothing is promised within 1.5 degrees.
     """
+    checked_tilt(mechanical_downtilt_deg)
     azimuths, elevations = _nodes(pattern, electrical_downtilt_deg)
     gain_dbi = pattern.gain(
         azimuths[np.newaxis, :],
         elevations[:, np.newaxis],
         electrical_downtilt_deg=electrical_downtilt_deg,
-    ).astype(np.float32)
+    )
+    sines = np.arange(-BINS_PER_QUARTER, BINS_PER_QUARTER + 1) / BINS_PER_QUARTER
+    ahead = np.concatenate((1.0 - np.abs(sines), np.abs(sines[1:]) - 1.0))
+    right = np.concatenate((sines, -sines[1:]))
+    offsets = np.mod(np.degrees(np.arctan2(right, ahead)) - SEAM_DEG, 360.0) + SEAM_DEG
+    offsets[-1] = SEAM_DEG + 360.0
     return GainTable(
         azimuth_deg=float(azimuth_deg),
         mechanical_downtilt_deg=float(mechanical_downtilt_deg),
         electrical_downtilt_deg=float(electrical_downtilt_deg),
         arrays=GainArrays(
-            gain_dbi=gain_dbi,
-            azimuth_offset_deg=azimuths,
-            elevation_deg=elevations,
-            azimuth_bin_node=_bin_nodes(azimuths),
-            elevation_bin_node=_bin_nodes(elevations),
-            shift_deg=_shifts(float(mechanical_downtilt_deg)),
-            mechanical_downtilt_deg=float(mechanical_downtilt_deg),
+            levels=_packed_levels(gain_dbi),
+            azimuth_places=_packed_places(offsets, azimuths),
+            elevation_places=_packed_places(np.degrees(np.arcsin(sines)), elevations),
+            peak_dbi=float(gain_dbi.max()),
+            tilt_cosine=math.cos(math.radians(mechanical_downtilt_deg)),
+            tilt_sine=math.sin(math.radians(mechanical_downtilt_deg)),
         ),
     )
 
 
-def _shifts(mechanical_downtilt_deg: float) -> NDArray[np.float32]:
-    """What a mechanical tilt adds to azimuth offset and elevation, at each whole degree."""
-    azimuths = np.arange(361.0)[np.newaxis, :]
-    elevations = np.arange(-SHIFT_REACH_DEG, SHIFT_REACH_DEG + 1.0)[:, np.newaxis]
-    seen_azimuth_deg, seen_elevation_deg = antenna_direction_deg(
-        azimuths, elevations, mechanical_downtilt_deg=mechanical_downtilt_deg
-    )
-    if mechanical_downtilt_deg == 0.0:
-        return np.zeros((0, 0, 2), dtype=np.float32)
-    turned = np.mod(seen_azimuth_deg - azimuths + 180.0, 360.0) - 180.0
-    return np.stack((turned, seen_elevation_deg - elevations), axis=-1).astype(np.float32)
+def _packed_levels(gain_dbi: NDArray[np.float64]) -> NDArray[np.uint32]:
+    """Levels below the peak in whole steps, each with its neighbour to the right; ends repeated."""
+    steps = np.round((gain_dbi.max() - gain_dbi) * LEVEL_STEPS_PER_DB)
+    steps = np.pad(np.minimum(steps, 65535.0).astype(np.uint32), ((0, 1), (0, 2)), mode="edge")
+    return steps[:, :-1] << 16 | steps[:, 1:]
+
+
+def _packed_places(
+    angles_deg: NDArray[np.float64], nodes_deg: NDArray[np.float64]
+) -> NDArray[np.uint32]:
+    """Where the bins that begin at given angles lie between the nodes, and how long they are."""
+    places = np.interp(angles_deg, nodes_deg, np.arange(float(nodes_deg.size)))
+    steps = np.round(places * PLACE_STEPS_PER_NODE).astype(np.uint32)
+    return steps << 9 | np.diff(steps, append=steps[-1])
 
 
 def _nodes(
     pattern: Pattern, electrical_downtilt_deg: float
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Azimuth offsets 0 to 360 and elevations -90 to 90 between which the gain is nearly straight.
+    """Azimuth offsets -90 to 270 and elevations -90 to 90 with a nearly straight gain between.
 
     Found from cuts through the pattern, dense where formulas join their pieces: bends may run
     slantwise through the beam.
@@ -190,16 +241,30 @@ def _nodes(
     height_deg = min(pattern.elevation_beamwidth_deg, 60.0)
     beam_deg = elevations[int(np.argmax(upright.max(axis=0)))]
     heights = height_deg * np.linspace(0.0, 1.5, 32)
-    azimuths = np.arange(0.0, 360.0, bin_deg)
+    azimuths = SEAM_DEG + np.arange(0.0, 360.0, bin_deg)
     level = pattern.gain(
         azimuths[np.newaxis, :],
         np.clip(beam_deg + np.concatenate((heights, -heights[1::4])), -90.0, 90.0)[:, np.newaxis],
         electrical_downtilt_deg=electrical_downtilt_deg,
     )
-    return (
-        _placed(0.0, _allowed_step_deg(level, BEND_REACH * width_deg, around=True)),
-        _placed(-90.0, _allowed_step_deg(upright, BEND_REACH * height_deg, around=False)),
-    )
+    around = _placed(SEAM_DEG, _allowed_step_deg(level, BEND_REACH * width_deg, around=True))
+    upwards = _placed(-90.0, _allowed_step_deg(upright, BEND_REACH * height_deg, around=False))
+    return _with_corners(around, level), _with_corners(upwards, upright)
+
+
+def _with_corners(
+    nodes_deg: NDArray[np.float64], cuts_dbi: NDArray[np.float64]
+) -> NDArray[np.float64]:
+    """The nodes, and half a bin off each bin where a cut has a corner, more of them.
+
+    A corner in the middle between two samples leaves the line between them by half of what the
+    second difference at either is.
+    """
+    bends_db = np.abs(cuts_dbi[:, :-2] - 2.0 * cuts_dbi[:, 1:-1] + cuts_dbi[:, 2:])
+    bends_db[cuts_dbi[:, 1:-1] < cuts_dbi.max() - DEPTH_DB] = 0.0
+    corners = np.flatnonzero((bends_db > 2.0 * WANTED_ERROR_DB).any(axis=0)) + 1
+    halfway = np.concatenate((corners - 0.5, corners + 0.5)) / BINS_PER_DEG + nodes_deg[0]
+    return np.union1d(nodes_deg, halfway)
 
 
 def _allowed_step_deg(
@@ -210,36 +275,50 @@ def _allowed_step_deg(
     ``cuts_dbi`` holds a sample at the start of each bin along its last axis. A straight line over
     a step leaves the curve by half the curve's second difference over half steps.
     """
-    mode: Literal["wrap", "edge"] = "wrap" if around else "edge"
-    deep = cuts_dbi < cuts_dbi.max() - DEPTH_DB
-    wanted_db = np.where(deep, DEEP_ERROR_DB, WANTED_ERROR_DB)
+    deep_dbi = cuts_dbi.max() - DEPTH_DB
     allowed = np.full(cuts_dbi.shape[-1], STEPS_DEG[-1])
     for step_deg in sorted(STEPS_DEG)[1:]:
         half = round(0.5 * step_deg * BINS_PER_DEG)
-        wide = np.pad(cuts_dbi, ((0, 0), (half, half)), mode=mode)
-        error_db = np.abs(0.5 * (wide[:, : -2 * half] + wide[:, 2 * half :]) - cuts_dbi)
-        bad = (error_db > wanted_db).any(axis=0)
+        bad = np.zeros(cuts_dbi.shape[-1], dtype=np.bool_)
+        _mark_bent(cuts_dbi, deep_dbi, half, around, bad)
         reach = half + math.ceil(reach_deg * BINS_PER_DEG)
         bad = maximum_filter1d(bad, 2 * reach + 1, mode="wrap" if around else "nearest")
         allowed[~bad & (allowed == 0.5 * step_deg)] = step_deg
     return allowed if around else allowed[:-1]
 
 
+@scalar
+def _mark_bent(
+    cuts_dbi: NDArray[np.float64],
+    deep_dbi: float,
+    half: int,
+    around: bool,
+    bent: NDArray[np.bool_],
+) -> None:
+    """Mark the bins where some cut leaves the line between its samples ``half`` bins away."""
+    cuts, bins = cuts_dbi.shape
+    for cut in range(cuts):
+        for middle in range(bins):
+            before, after = middle - half, middle + half
+            if around:
+                before, after = before % bins, after % bins
+            else:
+                before, after = max(before, 0), min(after, bins - 1)
+            here_dbi = cuts_dbi[cut, middle]
+            error_db = abs(0.5 * (cuts_dbi[cut, before] + cuts_dbi[cut, after]) - here_dbi)
+            if error_db > (DEEP_ERROR_DB if here_dbi < deep_dbi else WANTED_ERROR_DB):
+                bent[middle] = True
+
+
 def _placed(start_deg: float, allowed_deg: NDArray[np.float64]) -> NDArray[np.float64]:
     """Nodes from the start on, each step the largest that fits its place and all of its bins."""
+    fits = {}  # by step in bins: whether the step may be taken at each of its multiples
+    for step_deg in STEPS_DEG:
+        bins = round(step_deg * BINS_PER_DEG)
+        fits[bins] = (allowed_deg.reshape(-1, bins).min(axis=1) >= step_deg).tolist()
     places = [0]  # in bins
     while places[-1] < allowed_deg.size:
         place = places[-1]
-        for step_deg in STEPS_DEG:
-            bins = max(round(step_deg * BINS_PER_DEG), 1)
-            fits = place % bins == 0 and allowed_deg[place : place + bins].min() >= step_deg
-            if fits or bins == 1:
-                places.append(place + bins)
-                break
+        step = next(bins for bins in fits if place % bins == 0 and fits[bins][place // bins])
+        places.append(place + step)
     return start_deg + np.array(places) / BINS_PER_DEG
-
-
-def _bin_nodes(nodes_deg: NDArray[np.float64]) -> NDArray[np.int32]:
-    """For each bin of 1/32 degree from the first node on, the node at or below it."""
-    bins_between = np.round(np.diff(nodes_deg) * BINS_PER_DEG).astype(int)
-    return np.repeat(np.arange(bins_between.size, dtype=np.int32), bins_between)

@@ -1,7 +1,8 @@
 """The one place where numba's compile options stand.
 
-``error_model="numpy"`` lets a division by zero give inf or NaN as numpy does; ``fastmath`` is off,
-since holes in the terrain are NaN and must stay so.
+``error_model="numpy"`` lets a division by zero give inf or NaN as numpy does; of ``fastmath`` only
+"contract" is on, by which a product and a sum may be rounded once instead of twice: all else would
+forget NaN, and holes in the terrain are NaN and must stay so.
 
 Where the processor has 512-bit vectors, the compiler by default uses half their width, out of
 regard for the first processors that had them and slowed down. Measured here: whole vectors make
@@ -28,13 +29,20 @@ def _whole_vectors() -> None:
 
 
 _whole_vectors()
-scalar = njit(cache=True, error_model="numpy", nogil=True)
-# Short formulas that stand in the loops of a kernel: a call would keep a loop from vector code.
-formula = njit(cache=True, error_model="numpy", nogil=True, forceinline=True)
-# Pasted into its callers before anything is compiled: for pieces of a kernel that have one caller,
-# and for those whose arguments must be constants to the compiler.
-pasted = njit(cache=True, error_model="numpy", nogil=True, inline="always")
-parallel = njit(cache=True, error_model="numpy", nogil=True, parallel=True)
+_OPTIONS: dict[str, Any] = {
+    "cache": True,
+    "error_model": "numpy",
+    "nogil": True,
+    "fastmath": {"contract"},
+}
+scalar = njit(**_OPTIONS)
+# Becomes part of its caller when that is compiled: short formulas in the loops over millions of
+# cells, since a call keeps a loop from becoming vector code.
+inlined = njit(**_OPTIONS, forceinline=True)
+# Pasted into its callers before anything is compiled: pieces of a kernel whose arguments must be
+# constants to the compiler.
+pasted = njit(**_OPTIONS, inline="always")
+parallel = njit(**_OPTIONS, parallel=True)
 
 
 def over_arrays(scalar_function: Any) -> Callable[..., Any]:

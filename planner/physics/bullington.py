@@ -17,20 +17,20 @@ import math
 
 from numpy.typing import NDArray
 
-from planner.physics._jit import formula, scalar
+from planner.physics._jit import inlined, scalar
 from planner.physics.elementary import exp
 from planner.physics.fresnel import fresnel_parameter_scalar
 from planner.physics.knife_edge import knife_edge_loss_db_scalar
 
 
-@formula
+@inlined
 def bullington_loss_db_scalar(nu: float, distance_m: float) -> float:
     """Loss of the construction from nu of its one edge: equations (52), (53) or (58), then (59)."""
     edge_loss_db = knife_edge_loss_db_scalar(nu)
     return edge_loss_db + (1.0 - exp(edge_loss_db * (-1.0 / 6.0))) * (10.0 + 0.02e-3 * distance_m)
 
 
-@formula
+@inlined
 def bullington_point_nu_scalar(
     tx_slope: float,
     rx_slope: float,

@@ -13,7 +13,7 @@ from llvmlite import ir
 from numba import types
 from numba.extending import intrinsic
 
-from planner.physics._jit import formula
+from planner.physics._jit import inlined
 
 _LN_2 = 0.6931471805599453
 _LOG2_E = 1.4426950408889634
@@ -49,7 +49,7 @@ _bits: Any = _bits_of  # called with the value alone: numba supplies the context
 _from_bits: Any = _float_of
 
 
-@formula
+@inlined
 def log10(x: float) -> float:
     """Decimal logarithm of a normal number above 0; NaN and infinity give themselves.
 
@@ -74,7 +74,7 @@ def log10(x: float) -> float:
     return logarithm if x < math.inf else x
 
 
-@formula
+@inlined
 def exp(x: float) -> float:
     """e to the power x, for -700 <= x <= 700; outside it is that of the nearer bound.
 
@@ -98,7 +98,7 @@ def exp(x: float) -> float:
     return value if x == x else x
 
 
-@formula
+@inlined
 def arctangent(x: float) -> float:
     """Angle in radians, -pi/2 to pi/2, whose tangent is x; NaN gives NaN.
 

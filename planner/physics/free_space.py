@@ -5,17 +5,17 @@ from typing import Any
 
 from numpy.typing import ArrayLike
 
-from planner.physics._jit import formula, over_arrays
+from planner.physics._jit import inlined, over_arrays
 from planner.physics.elementary import log10
 from planner.units import SPEED_OF_LIGHT_M_S
 
 
-@formula
+@inlined
 def wavelength_m_scalar(frequency_mhz: float) -> float:
     return SPEED_OF_LIGHT_M_S / (frequency_mhz * 1e6)
 
 
-@formula
+@inlined
 def free_space_loss_db_scalar(distance_m: float, frequency_mhz: float) -> float:
     if not distance_m > 0.0:
         return math.nan

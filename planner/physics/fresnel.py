@@ -5,7 +5,7 @@ from typing import Any
 
 from numpy.typing import ArrayLike
 
-from planner.physics._jit import formula, over_arrays, scalar
+from planner.physics._jit import inlined, over_arrays, scalar
 
 
 @scalar
@@ -13,7 +13,7 @@ def fresnel_radius_m_scalar(distance_a_m: float, distance_b_m: float, wavelength
     return math.sqrt(wavelength_m * distance_a_m * distance_b_m / (distance_a_m + distance_b_m))
 
 
-@formula
+@inlined
 def fresnel_parameter_scalar(
     height_m: float, distance_a_m: float, distance_b_m: float, wavelength_m: float
 ) -> float:

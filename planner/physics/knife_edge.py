@@ -5,13 +5,13 @@ from typing import Any
 
 from numpy.typing import ArrayLike
 
-from planner.physics._jit import formula, over_arrays
+from planner.physics._jit import inlined, over_arrays
 from planner.physics.elementary import log10
 
 LOWEST_NU = -0.78  # below it the approximation's loss is 0; ITU-R P.526-15, equation (31)
 
 
-@formula
+@inlined
 def knife_edge_loss_db_scalar(nu: float) -> float:
     if nu <= LOWEST_NU:
         return 0.0

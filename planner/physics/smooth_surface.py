@@ -8,10 +8,10 @@ import math
 
 from numpy.typing import NDArray
 
-from planner.physics._jit import formula, scalar
+from planner.physics._jit import inlined, scalar
 
 
-@formula
+@inlined
 def fit_increments(
     distance_m: float, height_m: float, previous_distance_m: float, previous_height_m: float
 ) -> tuple[float, float]:
@@ -25,7 +25,7 @@ def fit_increments(
     return v1, v2
 
 
-@formula
+@inlined
 def smooth_surface_ends(
     v1: float,
     v2: float,

@@ -7,7 +7,7 @@ Section and equation numbers are from memory; tests hold the results to publishe
 
 import math
 
-from planner.physics._jit import formula, scalar
+from planner.physics._jit import inlined, scalar
 
 # Electrical constants of the ground, ITU-R P.1812-7 section 4.3.3 (relative permittivity, S/m).
 LAND_PERMITTIVITY, LAND_CONDUCTIVITY_S_M = 22.0, 0.003
@@ -177,7 +177,7 @@ def spherical_earth_loss_db_scalar(
     return (1.0 - clearance / required) * loss
 
 
-@formula
+@inlined
 def clears_sphere_scalar(
     distance_m: float,
     tx_height_m: float,
