@@ -22,7 +22,7 @@ from numpy.typing import ArrayLike, NDArray
 from pyproj import CRS, Geod, Transformer
 
 from planner.errors import Problem, TerrainError
-from planner.physics._jit import scalar
+from planner.physics._jit import inlined, scalar
 
 WGS84 = Geod(ellps="WGS84")
 
@@ -37,7 +37,7 @@ _CONFORMAL_WORDS = ("mercator", "conformal", "stereographic", "krovak", "gauss")
 _NOT_CONFORMAL_WORDS = ("pseudo", "equal area", "equidistant", "spherical")
 
 
-@scalar
+@inlined
 def chord_distance_m(
     delta_east_m: Any,
     delta_north_m: Any,

@@ -458,7 +458,8 @@ def test_rows_agree_with_the_layers():
     served = np.array([answer.verdict == "served" for answer in answers])
     layer_served = layers.best_server[tuple(cells.T)] > 0
     close = np.abs(signal - RADIO.service_threshold_dbm) < 3.0
-    assert np.array_equal(served[~close], layer_served[~close])
+    # A single cell may lie many decibels off, where an edge stands right before the receiver.
+    assert (served != layer_served)[~close].mean() <= 0.01
     assert served.any()
     assert not served.all()
 

@@ -49,6 +49,7 @@ def test_bounds_change_no_result(samples, roughness_m):
     root = (1.0 / np.sqrt(np.arange(1.0, surface.shape[0] + 1.0))).astype(np.float32)
     recalled = np.zeros(1 + 2 * RECALLED, dtype=np.int64)
     edges = np.zeros(blocks, dtype=np.float32), np.zeros(blocks, dtype=np.float32)
+    rows = np.zeros(BLOCK, dtype=np.float32), np.zeros(BLOCK, dtype=np.float32)
     for n in range(12):
         steps = samples + 3.2 + 1.1 * n
         rx = surface[samples - 1] + rng.uniform(-20.0, 40.0, LANES)
@@ -57,7 +58,17 @@ def test_bounds_change_no_result(samples, roughness_m):
         narrow[BEST_TANGENT : BEST_TANGENT + LANES] = -np.inf
         narrow[BEST_NEAR : BEST_NEAR + LANES] = -np.inf
         search(
-            narrow, surface, surface.ravel(), *tops, *edges, root, recalled, LANES, samples, steps
+            narrow,
+            surface,
+            surface.ravel(),
+            *tops,
+            *edges,
+            root,
+            *rows,
+            recalled,
+            LANES,
+            samples,
+            steps,
         )
         place = np.arange(1.0, samples + 1.0)[:, np.newaxis]
         heights = surface[:samples].astype(float)
@@ -76,10 +87,11 @@ def test_what_cannot_be_beaten_is_left_alone():
     narrow = np.zeros(NARROW_ROWS * LANES, dtype=np.float32)
     tops = [np.full((4, LANES), -50.0, dtype=np.float32) for _ in range(3)]
     edges = np.zeros(5, dtype=np.float32), np.zeros(5, dtype=np.float32)
+    rows = np.zeros(BLOCK, dtype=np.float32), np.zeros(BLOCK, dtype=np.float32)
     root = (1.0 / np.sqrt(np.arange(1.0, 41.0))).astype(np.float32)
     narrow[BEST_TANGENT : BEST_TANGENT + LANES] = np.inf
     narrow[BEST_NEAR : BEST_NEAR + LANES] = -1e-3
     recalled = np.zeros(1 + 2 * RECALLED, dtype=np.int64)
-    search(narrow, surface, surface.ravel(), *tops, *edges, root, recalled, LANES, 40, 43.0)
+    search(narrow, surface, surface.ravel(), *tops, *edges, root, *rows, recalled, LANES, 40, 43.0)
     assert (narrow[BEST_TANGENT : BEST_TANGENT + LANES] == math.inf).all()
     assert (narrow[BEST_NEAR : BEST_NEAR + LANES] == np.float32(-1e-3)).all()

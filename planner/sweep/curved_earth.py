@@ -67,7 +67,6 @@ def smooth_bullington_loss_db(
 @scalar
 def obstruction(
     narrow: NDArray,
-    wide: NDArray,
     ground: NDArray,
     block_top: NDArray,
     lane: int,
@@ -105,7 +104,7 @@ def obstruction(
     bend = 1.0 / (2.0 * link.earth_radius_m)
     for q in range(OWN_SAMPLES):
         share = float(narrow[SHARE + q * LANES + lane])
-        x = wide[DISTANCE + lane] * (1.0 - share)
+        x = float(narrow[DISTANCE + lane]) * (1.0 - share)
         above = narrow[OWN_BENT + q * LANES + lane] + x * x * bend - rx_height * (1.0 - share)
         highest = max(highest, above)
         steepest = max(steepest, above / (steps * share))
@@ -115,7 +114,6 @@ def obstruction(
 @scalar
 def excess_over_sphere_db(
     narrow: NDArray,
-    wide: NDArray,
     ground: NDArray,
     block_top: NDArray,
     lane: int,
@@ -126,18 +124,21 @@ def excess_over_sphere_db(
     link: Link,
 ) -> float:
     """What the smooth sphere adds to a cell beyond Bullington's smooth profile, 0 or more. [dB]"""
-    total = wide[DISTANCE + lane]
-    cell_ground = wide[GROUND + lane] - link.tx_height_m
+    total = float(narrow[DISTANCE + lane])
+    cell_ground = float(narrow[GROUND + lane])
     rx_height = cell_ground + link.receiver_height_m
-    tx_effective, rx_effective = wide[TX_EFFECTIVE + lane], wide[RX_EFFECTIVE + lane]
+    tx_effective, rx_effective = (
+        float(narrow[TX_EFFECTIVE + lane]),
+        float(narrow[RX_EFFECTIVE + lane]),
+    )
     tx_slope = narrow[CELL_GROUND_SLOPE + lane] - rx_height / steps
     if tx_slope > 0.0:
         highest, rx_slope = obstruction(
-            narrow, wide, ground, block_top, lane, samples, t, steps, rx_height, link
+            narrow, ground, block_top, lane, samples, t, steps, rx_height, link
         )
         tx_surface, rx_surface = smooth_surface_ends(
-            wide[V1 + lane],
-            wide[V2 + lane],
+            float(narrow[V1 + lane]),
+            float(narrow[V2 + lane]),
             steps,
             highest,
             tx_slope,

@@ -38,6 +38,8 @@ def scan(
     narrow: NDArray,
     flat_surface: NDArray,
     root: NDArray,
+    row_steepness: NDArray,
+    row_weight: NDArray,
     lanes: int,
     low: int,
     high: int,
@@ -49,17 +51,26 @@ def scan(
     one base for all four rows, indices that cannot be negative and offsets known to the compiler,
     next to nothing is checked at run time.
     """
+    for i in range(low, high):
+        row_steepness[i - low] = f4(1.0) / f4(steps - (i + 1.0))
+    for i in range(low, high):
+        row_weight[i - low] = root[i] * np.sqrt(row_steepness[i - low])
     rose = False
     for i in range(low, high, 4):
         at = np.uint64(i * LANES)
-        s0 = f4(1.0 / (steps - (i + 1.0)))
-        s1 = f4(1.0 / (steps - (i + 2.0)))
-        s2 = f4(1.0 / (steps - (i + 3.0)))
-        s3 = f4(1.0 / (steps - (i + 4.0)))
-        w0 = root[i] * f4(math.sqrt(s0))
-        w1 = root[i + 1] * f4(math.sqrt(s1))
-        w2 = root[i + 2] * f4(math.sqrt(s2))
-        w3 = root[i + 3] * f4(math.sqrt(s3))
+        row = i - low
+        s0, s1, s2, s3 = (
+            row_steepness[row],
+            row_steepness[row + 1],
+            row_steepness[row + 2],
+            row_steepness[row + 3],
+        )
+        w0, w1, w2, w3 = (
+            row_weight[row],
+            row_weight[row + 1],
+            row_weight[row + 2],
+            row_weight[row + 3],
+        )
         p0, p1, p2, p3 = f4(i + 1.0), f4(i + 2.0), f4(i + 3.0), f4(i + 4.0)
         for lane in range(lanes):
             h0 = flat_surface[at + np.uint64(lane)]
@@ -87,6 +98,8 @@ def scan_latest(
     surface: NDArray,
     flat_surface: NDArray,
     root: NDArray,
+    row_steepness: NDArray,
+    row_weight: NDArray,
     lanes: int,
     low: int,
     high: int,
@@ -94,9 +107,9 @@ def scan_latest(
 ) -> None:
     """Let the samples that fill no block compete: ``low`` (a multiple of four) up to ``high``."""
     fours = low + (high - low) // 4 * 4
-    scan(narrow, flat_surface, root, lanes, low, fours, steps)
+    scan(narrow, flat_surface, root, row_steepness, row_weight, lanes, low, fours, steps)
     if fours < high and high >= 4:  # once more some of those that were counted already
-        scan(narrow, flat_surface, root, lanes, high - 4, high, steps)
+        scan(narrow, flat_surface, root, row_steepness, row_weight, lanes, high - 4, high, steps)
         return
     for i in range(fours, high):
         steepness = f4(1.0 / (steps - (i + 1.0)))
@@ -168,6 +181,8 @@ def search(
     steepness: NDArray,
     weight: NDArray,
     root: NDArray,
+    row_steepness: NDArray,
+    row_weight: NDArray,
     recalled: NDArray,
     lanes: int,
     samples: int,
@@ -180,14 +195,35 @@ def search(
     longer holds an extreme soon comes last, raises nothing and is forgotten.
     """
     blocks = samples // BLOCK
-    scan_latest(narrow, surface, flat_surface, root, lanes, blocks * BLOCK, samples, steps)
+    scan_latest(
+        narrow,
+        surface,
+        flat_surface,
+        root,
+        row_steepness,
+        row_weight,
+        lanes,
+        blocks * BLOCK,
+        samples,
+        steps,
+    )
     known = recalled[0]
     kept = 0
     for n in range(known):
         recalled[1 + RECALLED + n] = recalled[known - n]
     for n in range(known):
         block = recalled[1 + RECALLED + n]
-        if scan(narrow, flat_surface, root, lanes, block * BLOCK, (block + 1) * BLOCK, steps):
+        if scan(
+            narrow,
+            flat_surface,
+            root,
+            row_steepness,
+            row_weight,
+            lanes,
+            block * BLOCK,
+            (block + 1) * BLOCK,
+            steps,
+        ):
             kept += 1
             recalled[kept] = block
     weigh_edges(steepness, weight, root, blocks, steps)
@@ -213,12 +249,23 @@ def search(
         seen = False
         for n in range(known):
             seen = seen | (recalled[1 + RECALLED + n] == block)
+        low = block * BLOCK
         if (
             not seen
             and may_hold_better(
                 narrow, block_top, steepness, weight, lanes, block, block, block + 1, steps
             )
-            and scan(narrow, flat_surface, root, lanes, block * BLOCK, (block + 1) * BLOCK, steps)
+            and scan(
+                narrow,
+                flat_surface,
+                root,
+                row_steepness,
+                row_weight,
+                lanes,
+                low,
+                low + BLOCK,
+                steps,
+            )
         ):
             if kept == RECALLED:
                 for n in range(1, RECALLED):

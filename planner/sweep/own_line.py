@@ -6,7 +6,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.geodesy import chord_distance_m
-from planner.physics._jit import pasted, scalar
+from planner.physics._jit import in_single_precision, pasted, scalar
 from planner.sweep.sampling_lines import crossing
 from planner.sweep.state import (
     ACROSS,
@@ -42,6 +42,7 @@ from planner.sweep.state import (
 )
 
 f4 = np.float32
+_distance_m = in_single_precision(chord_distance_m)
 FREE = -math.sqrt(2.0)  # nu where the first Fresnel zone is just free
 
 
@@ -66,16 +67,19 @@ def own_cells(
     ahead_north = 0.0 if wedge.along_rows else -wedge.forward * mast.cell_m * t
     side_east = 0.0 if wedge.along_rows else mast.cell_m
     side_north = -mast.cell_m if wedge.along_rows else 0.0
+    scale = f4(mast.scale)
+    gradient_east = f4(mast.scale_gradient_east_per_m)
+    gradient_north = f4(mast.scale_gradient_north_per_m)
     found = False
     for lane in range(lanes):
         cell = place[EDGE + lane + 1] >> 32
         across = cell - wedge.side
-        distance = chord_distance_m(
-            ahead_east + across * side_east,
-            ahead_north + across * side_north,
-            mast.scale,
-            mast.scale_gradient_east_per_m,
-            mast.scale_gradient_north_per_m,
+        distance = _distance_m(
+            f4(ahead_east + across * side_east),
+            f4(ahead_north + across * side_north),
+            scale,
+            gradient_east,
+            gradient_north,
         )
         has_cell = cell != place[EDGE + lane] >> 32
         in_window = (cell >= wedge.lateral_low) & (cell <= wedge.lateral_high)
@@ -86,7 +90,7 @@ def own_cells(
         wanted = has_cell & in_window & in_wedge & in_ring & (distance <= radius_m)
         place[CELL + lane] = min(max(cell, 0), wedge.lateral_last)
         wide[ACROSS + lane] = across
-        wide[DISTANCE + lane] = distance
+        narrow[DISTANCE + lane] = distance
         narrow[WANTED + lane] = f4(1.0) if wanted else f4(0.0)
         found = found | wanted
     return found
@@ -111,8 +115,7 @@ def own_lines(
     stride = wedge.lateral_stride
     for lane in range(lanes):
         height = flat_ground[np.uint64(start + place[CELL + lane] * stride)]
-        wide[GROUND + lane] = height
-        narrow[OWN_CROSSING + lane] = height - link.tx_height_m
+        narrow[OWN_CROSSING + lane] = height - f4(link.tx_height_m)
     if flat_obstacle.size > 0:
         for lane in range(lanes):
             narrow[OWN_WOOD + lane] = flat_obstacle[np.uint64(start + place[CELL + lane] * stride)]
@@ -177,32 +180,37 @@ def own_profile(
     link: Link,
 ) -> None:
     """The ray to each cell, its own last samples, and the horizon seen from the mast."""
-    bend = 1.0 / (2.0 * link.earth_radius_m)
+    bend = f4(1.0 / (2.0 * link.earth_radius_m))
+    rx_above = f4(link.receiver_height_m)
+    u = f4(steps)
+    per_wave = f4(2.0 / link.wavelength_m)
+    one = f4(1.0)
+    square = f4(t * t)
     for lane in range(lanes):
-        across = wide[ACROSS + lane]
-        length = math.sqrt(t * t + across * across) - 1e-9
-        whole = int(length)
-        wide[SPACING + lane] = 1.0 / (whole + 1.0 if length > whole else max(whole * 1.0, 1.0))
+        across = f4(wide[ACROSS + lane])
+        length = np.sqrt(square + across * across) - f4(1e-3)
+        whole = f4(np.int32(length))
+        narrow[SPACING + lane] = one / (whole + one)
     for lane in range(lanes):
-        distance = wide[DISTANCE + lane]
-        inverse = 1.0 / distance
-        wide[PER_METRE + lane] = steps * inverse
-        wide[NU_SCALE + lane] = steps * math.sqrt(inverse * (2.0 / link.wavelength_m))
-        bulge = distance * distance * bend
-        rx_bent = wide[GROUND + lane] + link.receiver_height_m - link.tx_height_m - bulge
+        distance = narrow[DISTANCE + lane]
+        inverse = one / distance
+        narrow[PER_METRE + lane] = u * inverse
+        narrow[NU_SCALE + lane] = u * np.sqrt(inverse * per_wave)
+        ground = narrow[OWN_CROSSING + lane]
+        rx_bent = ground + rx_above - distance * distance * bend
+        narrow[GROUND + lane] = ground
         narrow[RX_BENT + lane] = rx_bent
-        narrow[DIRECT + lane] = rx_bent / steps
+        narrow[DIRECT + lane] = rx_bent * f4(1.0 / steps)
         narrow[TX_SLOPE + lane] = narrow[SURFACE_SLOPE + lane]
         narrow[CELL_GROUND_SLOPE + lane] = narrow[GROUND_SLOPE + lane]
         narrow[CELL_HOLES + lane] = narrow[HOLES + lane]
-    _own_sample(narrow, wide, lanes, t, steps, has_obstacles, link, 1)
-    _own_sample(narrow, wide, lanes, t, steps, has_obstacles, link, 2)
+    _own_sample(narrow, lanes, t, steps, has_obstacles, link, 1)
+    _own_sample(narrow, lanes, t, steps, has_obstacles, link, 2)
 
 
 @pasted
 def _own_sample(
     narrow: NDArray,
-    wide: NDArray,
     lanes: int,
     t: float,
     steps: float,
@@ -211,41 +219,46 @@ def _own_sample(
     q: int,
 ) -> None:
     """The sample q steps before each cell."""
-    bend = 1.0 / (2.0 * link.earth_radius_m)
+    bend = f4(1.0 / (2.0 * link.earth_radius_m))
     near = OWN_CROSSING + (q - 1) * LANES
     far = OWN_CROSSING + q * LANES
     near_wood = OWN_WOOD + (q - 1) * LANES
     far_wood = OWN_WOOD + q * LANES
-    lower = max(t - q, 0.0)
-    per_line = 1.0 / (t - (q - 1) - lower)
+    lowest = max(t - q, 0.0)
+    # The sample lies t * (1 - share) - lowest above the lower line, of this line spacing.
+    start = f4((t - lowest) / (t - (q - 1) - lowest))
+    fall = f4(t / (t - (q - 1) - lowest))
+    per_step = f4(1.0 / steps)
+    clearing = f4(link.obstacle_clearing_m)
+    one, none = f4(1.0), f4(0.0)
+    lowest_possible = f4(-np.inf)
     for lane in range(lanes):
-        distance = wide[DISTANCE + lane]
-        share = q * wide[SPACING + lane]
-        exists = share < 1.0 - 1e-9
-        share = share if exists else 0.5
-        part = f4((t * (1.0 - share) - lower) * per_line) if exists else f4(0.0)
+        distance = narrow[DISTANCE + lane]
+        share = f4(q) * narrow[SPACING + lane]
+        exists = share < f4(1.0 - 1e-6)
+        share = share if exists else f4(0.5)
+        part = start - fall * share if exists else none
         height = narrow[far + lane] + part * (narrow[near + lane] - narrow[far + lane])
-        x = distance * (1.0 - share)
+        x = distance * (one - share)
+        surface = height
         if has_obstacles:
             wood = narrow[far_wood + lane] + part * (
                 narrow[near_wood + lane] - narrow[far_wood + lane]
             )
-            counts = (x >= link.obstacle_clearing_m) & (distance - x >= link.obstacle_clearing_m)
+            counts = (x >= clearing) & (distance * share >= clearing)
             surface = height + wood if counts else height
-        else:
-            surface = height
-        bent = f4(surface - x * x * bend) if exists else f4(-np.inf)
-        per_step = f4(1.0 / (steps * (1.0 - share)))
-        slope = height * per_step if exists else f4(-np.inf)
+        bent = surface - x * x * bend if exists else lowest_possible
+        slope_share = per_step / (one - share)
+        slope = height * slope_share if exists else lowest_possible
         narrow[SHARE + (q - 1) * LANES + lane] = share
         narrow[OWN_BENT + (q - 1) * LANES + lane] = bent
-        narrow[TX_SLOPE + lane] = max(bent * per_step, narrow[TX_SLOPE + lane])
+        narrow[TX_SLOPE + lane] = max(bent * slope_share, narrow[TX_SLOPE + lane])
         narrow[CELL_GROUND_SLOPE + lane] = max(slope, narrow[CELL_GROUND_SLOPE + lane])
-        narrow[CELL_HOLES + lane] += (height - height) if exists else f4(0.0)
+        narrow[CELL_HOLES + lane] += (height - height) if exists else none
 
 
 @scalar
-def start_search(narrow: NDArray, wide: NDArray, lanes: int, steps: float) -> None:
+def start_search(narrow: NDArray, lanes: int, steps: float) -> None:
     """First candidates: the own samples, and what is too far from mattering to be sought.
 
     Where the ray is free the tangent from the receiver is not needed; what is not wanted is
@@ -254,7 +267,7 @@ def start_search(narrow: NDArray, wide: NDArray, lanes: int, steps: float) -> No
     for lane in range(lanes):
         blocked = narrow[TX_SLOPE + lane] >= narrow[DIRECT + lane]
         wanted = (narrow[WANTED + lane] > f4(0.0)) & (narrow[CELL_HOLES + lane] == f4(0.0))
-        least = f4(FREE / wide[NU_SCALE + lane])
+        least = f4(FREE) / narrow[NU_SCALE + lane]
         narrow[BEST_TANGENT + lane] = f4(-np.inf) if wanted & blocked else f4(np.inf)
         narrow[BEST_NEAR + lane] = least if wanted else f4(np.inf)
     _own_candidate(narrow, lanes, steps, 0)
@@ -278,7 +291,6 @@ def _own_candidate(narrow: NDArray, lanes: int, steps: float, q: int) -> None:
 @scalar
 def count_cleared(
     narrow: NDArray,
-    wide: NDArray,
     ground: NDArray,
     surface: NDArray,
     root: NDArray,
@@ -300,7 +312,7 @@ def count_cleared(
         weight = root[i] * f4(math.sqrt(steepness))
         share = k / steps
         for lane in range(lanes):
-            beyond = wide[DISTANCE + lane] * share >= link.obstacle_clearing_m
+            beyond = narrow[DISTANCE + lane] * share >= link.obstacle_clearing_m
             height = surface[i, lane] if beyond else ground[i, lane]
             if horizon:
                 narrow[TX_SLOPE + lane] = max(height / place, narrow[TX_SLOPE + lane])

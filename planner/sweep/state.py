@@ -101,6 +101,8 @@ class Fan(NamedTuple):
     edge_steepness: NDArray  # [block] float32, 1 / distance from the cell to a block's first sample
     edge_weight: NDArray  # [block] float32, 1 / sqrt of the product of its distances to both ends
     root_steepness: NDArray  # [sample] float32, 1 / sqrt(i + 1)
+    row_steepness: NDArray  # [BLOCK] float32, the same two for the samples that are looked at
+    row_weight: NDArray  # [BLOCK] float32
     recalled: NDArray  # int64: number of blocks, then the blocks
 
 
@@ -135,24 +137,24 @@ OWN_CROSSING = (
 )  # to 31: ground where the cell's own line crosses this line and earlier ones
 OWN_WOOD = 32 * LANES  # to 35: obstacles there
 CELL_GROUND_SLOPE = 36 * LANES  # steepest bare ground seen from the mast
-NARROW_ROWS = 37
+DISTANCE = 37 * LANES  # true, to the cell
+GROUND = 38 * LANES  # of the cell
+SPACING = 39 * LANES  # of the cell's exact samples, as a share of its distance
+PER_METRE = 40 * LANES  # steps per true metre on the way to the cell
+NU_SCALE = 41 * LANES  # by which BEST_NEAR becomes nu
+LOSS = 42 * LANES
+ELEVATION = 43 * LANES
+RATIO = 44 * LANES
+TX_EFFECTIVE = 45 * LANES  # heights above the smooth surface
+RX_EFFECTIVE = 46 * LANES
+V1 = 47 * LANES  # sums of the smooth surface's fit, in steps
+V2 = 48 * LANES
+SPHERE = 49 * LANES  # 1 where the spherical earth may add something
+NARROW_ROWS = 50
 
 # Offsets into ``wide``.
-DISTANCE = 0 * LANES  # true, to the cell
-GROUND = 1 * LANES  # of the cell
-LOSS = 2 * LANES
-ELEVATION = 3 * LANES
-RATIO = 4 * LANES
-TX_EFFECTIVE = 5 * LANES  # heights above the smooth surface
-RX_EFFECTIVE = 6 * LANES
-V1 = 7 * LANES
-V2 = 8 * LANES
-ACROSS = 9 * LANES  # lateral distance from the mast in cells
-SPHERE = 10 * LANES  # 1 where the spherical earth may add something
-SPACING = 11 * LANES  # of the cell's exact samples, as a share of its distance
-PER_METRE = 12 * LANES  # steps per true metre on the way to the cell
-NU_SCALE = 13 * LANES  # by which BEST_NEAR becomes nu
-WIDE_ROWS = 14
+ACROSS = 0 * LANES  # lateral distance of the cell from the mast, in cells
+WIDE_ROWS = 1
 
 # Offsets into ``place``; the last two hold one entry more than there are lanes. What is computed
 # from them stands before them: a loop that stored further on could not be told from one that

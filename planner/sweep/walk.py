@@ -143,7 +143,7 @@ def _walk(
     bent_ground, surface = fan.bent_ground, fan.bent_surface
     block_top, group_top, region_top = fan.block_top, fan.group_top, fan.region_top
     steepness, weight, root = fan.edge_steepness, fan.edge_weight, fan.root_steepness
-    recalled = fan.recalled
+    row_steepness, row_weight, recalled = fan.row_steepness, fan.row_weight, fan.recalled
     flat_surface = surface.reshape(surface.size)
     flat_ground, flat_obstacle = ground.reshape(ground.size), obstacle.reshape(obstacle.size)
     path_loss, elevation = layers.path_loss_db, layers.departure_elevation_deg
@@ -198,13 +198,12 @@ def _walk(
             own_profile(narrow, wide, lanes, t, steps, has_obstacles, link)
             if far < samples:
                 count_cleared(
-                    narrow, wide, bent_ground, surface, root, lanes, far, samples, steps, link, True
+                    narrow, bent_ground, surface, root, lanes, far, samples, steps, link, True
                 )
-            start_search(narrow, wide, lanes, steps)
+            start_search(narrow, lanes, steps)
             if far < samples:
                 count_cleared(
                     narrow,
-                    wide,
                     bent_ground,
                     surface,
                     root,
@@ -225,21 +224,22 @@ def _walk(
                 steepness,
                 weight,
                 root,
+                row_steepness,
+                row_weight,
                 recalled,
                 lanes,
                 far,
                 steps,
             )
-            losses(narrow, wide, lanes, link)
-            if t > spherical_t and may_meet_sphere(narrow, wide, lanes, samples, steps, mast, link):
+            losses(narrow, lanes, link)
+            if t > spherical_t and may_meet_sphere(narrow, lanes, samples, steps, mast, link):
                 for lane in range(lanes):
-                    if wide[SPHERE + lane] > 0.0:
-                        wide[LOSS + lane] += excess_over_sphere_db(
-                            narrow, wide, bent_ground, block_top, lane, far, t, steps, mast, link
+                    if narrow[SPHERE + lane] > 0.0:
+                        narrow[LOSS + lane] += excess_over_sphere_db(
+                            narrow, bent_ground, block_top, lane, far, t, steps, mast, link
                         )
             write_cells(
                 narrow,
-                wide,
                 place,
                 lanes,
                 wedge,
@@ -295,6 +295,8 @@ def walk_fan(
         np.empty(blocks, dtype=np.float32),
         np.empty(blocks, dtype=np.float32),
         root_steepness,
+        np.empty(BLOCK, dtype=np.float32),
+        np.empty(BLOCK, dtype=np.float32),
         np.empty(1 + 2 * RECALLED, dtype=np.int64),
     )
     wedge = _wedge(wedge_number, ground, mast, layers)
