@@ -31,6 +31,7 @@ from planner.sweep.state import (
     NU_SCALE,
     PER_METRE,
     RATIO,
+    RX_ABOVE,
     RX_EFFECTIVE,
     SPHERE,
     SUM,
@@ -60,10 +61,9 @@ def losses(narrow: NDArray, lanes: int, link: Link) -> None:
     """Path loss, angle and clearance of each lane's cell but for the spherical earth."""
     bend = f4(1.0 / (2.0 * link.earth_radius_m))
     wavelength, frequency = f4(link.wavelength_m), f4(link.frequency_mhz)
-    rx_above = f4(link.receiver_height_m)
     for lane in range(lanes):
         distance = narrow[DISTANCE + lane]
-        rx_height = narrow[GROUND + lane] + rx_above
+        rx_height = narrow[GROUND + lane] + narrow[RX_ABOVE + lane]
         per_metre = narrow[PER_METRE + lane]
         blocked = narrow[TX_SLOPE + lane] >= narrow[DIRECT + lane]
         tx_slope = narrow[TX_SLOPE + lane] * per_metre
@@ -94,7 +94,6 @@ def may_meet_sphere(
 ) -> bool:
     """Effective heights of each lane's path; whether the spherical earth may add to some loss."""
     tx_ground = f4(mast.ground_m - link.tx_height_m)
-    rx_above = f4(link.receiver_height_m)
     earth_radius, wavelength = f4(link.earth_radius_m), f4(link.wavelength_m)
     u, last_step = f4(steps), f4(samples)
     two, six, none = f4(2.0), f4(6.0), f4(0.0)
@@ -111,7 +110,7 @@ def may_meet_sphere(
             v1 + part1, v2 + part2, u, none, none, none, tx_ground, ground
         )
         tx_effective = -tx_surface
-        rx_effective = ground + rx_above - rx_surface
+        rx_effective = ground + narrow[RX_ABOVE + lane] - rx_surface
         clears = _clears_sphere(
             narrow[DISTANCE + lane], tx_effective, rx_effective, earth_radius, wavelength
         )

@@ -22,6 +22,7 @@ from planner.sweep.state import (
     LANES,
     OWN_BENT,
     OWN_SAMPLES,
+    RX_ABOVE,
     RX_EFFECTIVE,
     SHARE,
     TX_EFFECTIVE,
@@ -126,7 +127,7 @@ def excess_over_sphere_db(
     """What the smooth sphere adds to a cell beyond Bullington's smooth profile, 0 or more. [dB]"""
     total = float(narrow[DISTANCE + lane])
     cell_ground = float(narrow[GROUND + lane])
-    rx_height = cell_ground + link.receiver_height_m
+    rx_height = cell_ground + float(narrow[RX_ABOVE + lane])
     tx_effective, rx_effective = (
         float(narrow[TX_EFFECTIVE + lane]),
         float(narrow[RX_EFFECTIVE + lane]),

@@ -14,6 +14,7 @@ from planner.errors import Problem, TerrainError
 from planner.geodesy import LocalFrame, local_frame
 from planner.physics.diffraction import Polarization
 from planner.physics.free_space import free_space_loss_db_scalar, wavelength_m_scalar
+from planner.sweep.course import fans
 from planner.sweep.state import (
     COMPUTED,
     LEAST_DISTANCE_M,
@@ -23,7 +24,7 @@ from planner.sweep.state import (
     Link,
     Mast,
 )
-from planner.sweep.walk import fans, walk_fan
+from planner.sweep.walk import walk_fan
 from planner.terrain import Terrain
 from planner.units import EARTH_RADIUS_KM
 

@@ -30,6 +30,7 @@ from planner.sweep.state import (
     OWN_CROSSING,
     OWN_WOOD,
     PER_METRE,
+    RX_ABOVE,
     RX_BENT,
     SHARE,
     SPACING,
@@ -179,9 +180,7 @@ def own_profile(
     has_obstacles: bool,
     link: Link,
 ) -> None:
-    """The ray to each cell, its own last samples, and the horizon seen from the mast."""
-    bend = f4(1.0 / (2.0 * link.earth_radius_m))
-    rx_above = f4(link.receiver_height_m)
+    """Each cell's own last samples, and the horizon seen from the mast on the way to it."""
     u = f4(steps)
     per_wave = f4(2.0 / link.wavelength_m)
     one = f4(1.0)
@@ -196,11 +195,7 @@ def own_profile(
         inverse = one / distance
         narrow[PER_METRE + lane] = u * inverse
         narrow[NU_SCALE + lane] = u * np.sqrt(inverse * per_wave)
-        ground = narrow[OWN_CROSSING + lane]
-        rx_bent = ground + rx_above - distance * distance * bend
-        narrow[GROUND + lane] = ground
-        narrow[RX_BENT + lane] = rx_bent
-        narrow[DIRECT + lane] = rx_bent * f4(1.0 / steps)
+        narrow[GROUND + lane] = narrow[OWN_CROSSING + lane]
         narrow[TX_SLOPE + lane] = narrow[SURFACE_SLOPE + lane]
         narrow[CELL_GROUND_SLOPE + lane] = narrow[GROUND_SLOPE + lane]
         narrow[CELL_HOLES + lane] = narrow[HOLES + lane]
@@ -255,6 +250,18 @@ def _own_sample(
         narrow[TX_SLOPE + lane] = max(bent * slope_share, narrow[TX_SLOPE + lane])
         narrow[CELL_GROUND_SLOPE + lane] = max(slope, narrow[CELL_GROUND_SLOPE + lane])
         narrow[CELL_HOLES + lane] += (height - height) if exists else none
+
+
+@scalar
+def own_rays(narrow: NDArray, lanes: int, steps: float, link: Link) -> None:
+    """The ray to each cell's receiver, RX_ABOVE its ground."""
+    bend = f4(1.0 / (2.0 * link.earth_radius_m))
+    per_step = f4(1.0 / steps)
+    for lane in range(lanes):
+        distance = narrow[DISTANCE + lane]
+        rx_bent = narrow[GROUND + lane] + narrow[RX_ABOVE + lane] - distance * distance * bend
+        narrow[RX_BENT + lane] = rx_bent
+        narrow[DIRECT + lane] = rx_bent * per_step
 
 
 @scalar

@@ -26,6 +26,7 @@ from planner.sweep.state import (
     MOMENT,
     NEXT_INDEX,
     REGION,
+    RX_ABOVE,
     SUM,
     SURFACE_SLOPE,
     UPPER,
@@ -81,6 +82,7 @@ def start_fan(
         narrow[SUM + lane] = 0.0
         narrow[MOMENT + lane] = 0.0
         narrow[HOLES + lane] = 0.0
+        narrow[RX_ABOVE + lane] = link.receiver_height_m
 
 
 @pasted

@@ -150,7 +150,8 @@ RX_EFFECTIVE = 46 * LANES
 V1 = 47 * LANES  # sums of the smooth surface's fit, in steps
 V2 = 48 * LANES
 SPHERE = 49 * LANES  # 1 where the spherical earth may add something
-NARROW_ROWS = 50
+RX_ABOVE = 50 * LANES  # receiving antenna above the cell's ground
+NARROW_ROWS = 51
 
 # Offsets into ``wide``.
 ACROSS = 0 * LANES  # lateral distance of the cell from the mast, in cells
