@@ -14,23 +14,9 @@ from planner.physics._jit import scalar
 from planner.sweep.cells import losses, may_meet_sphere, write_cells
 from planner.sweep.course import course_of, new_fan, samples_before, wedge_of
 from planner.sweep.curved_earth import excess_over_sphere_db
-from planner.sweep.extremes import search
-from planner.sweep.own_line import (
-    count_cleared,
-    own_cells,
-    own_lines,
-    own_profile,
-    own_rays,
-    start_search,
-)
-from planner.sweep.sampling_lines import (
-    cross_line,
-    include_sample,
-    next_line,
-    raise_horizon,
-    start_fan,
-    take_sample,
-)
+from planner.sweep.own_line import count_cleared, own_cells, own_lines, own_profile, own_rays
+from planner.sweep.sampling_lines import start_fan
+from planner.sweep.stages import find_extremes, include_samples, sample_line
 from planner.sweep.state import LOSS, SPHERE, Fan, Layers, Link, Mast, Wedge
 
 
@@ -70,22 +56,21 @@ def _walk(
     while wedge.line_low <= line <= wedge.line_high and t <= course.last_t:
         steps = t * course.stretch
         samples, far = samples_before(steps, has_obstacles, course.clearing_steps)
-        while included < samples:
-            at = (included + 1.0) / course.stretch
-            include_sample(
-                narrow,
-                bent_ground,
-                surface,
-                lanes,
-                included,
-                at,
-                has_obstacles,
-                course.clearing_bulge_m,
-            )
-            included += 1
-        while risen < far:
-            raise_horizon(narrow, surface, block_top, group_top, region_top, lanes, risen)
-            risen += 1
+        include_samples(
+            narrow,
+            bent_ground,
+            surface,
+            block_top,
+            group_top,
+            region_top,
+            course,
+            included,
+            samples,
+            risen,
+            far,
+            has_obstacles,
+        )
+        included, risen = max(included, samples), max(risen, far)
         if t > course.first_t and own_cells(
             narrow, wide, place, lanes, t, wedge, mast, inner, outer, link.radius_m
         ):
@@ -98,22 +83,9 @@ def _walk(
                 count_cleared(
                     narrow, bent_ground, surface, root, lanes, far, samples, steps, link, True
                 )
-            start_search(narrow, lanes, steps)
-            if far < samples:
-                count_cleared(
-                    narrow,
-                    bent_ground,
-                    surface,
-                    root,
-                    lanes,
-                    far,
-                    samples,
-                    steps,
-                    link,
-                    False,
-                )
-            search(
+            find_extremes(
                 narrow,
+                bent_ground,
                 surface,
                 flat_surface,
                 block_top,
@@ -126,8 +98,10 @@ def _walk(
                 row_weight,
                 recalled,
                 lanes,
+                samples,
                 far,
                 steps,
+                link,
             )
             losses(narrow, lanes, link)
             if t > course.spherical_t and may_meet_sphere(
@@ -150,12 +124,21 @@ def _walk(
                 clearance,
                 status,
             )
-        cross_line(narrow, place, lanes, flat_ground, flat_obstacle, wedge, line, link)
-        while (taken + 1.0) / course.stretch <= t:
-            share = ((taken + 1.0) / course.stretch - last_t) / (t - last_t)
-            take_sample(narrow, bent_ground, surface, lanes, taken, share, has_obstacles)
-            taken += 1
-        next_line(narrow, place, lanes)
+        taken = sample_line(
+            narrow,
+            place,
+            bent_ground,
+            surface,
+            flat_ground,
+            flat_obstacle,
+            wedge,
+            line,
+            link,
+            course,
+            taken,
+            t,
+            last_t,
+        )
         last_t = t
         t += 1.0
         line += wedge.forward
