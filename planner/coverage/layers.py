@@ -143,7 +143,8 @@ def combine(
         last = min(field.row_start + field.path_loss_db.shape[0], stop)
         if first < last:
             mast = _mast_arrays(field, first, last, start)
-            add_mast(mast, _sector_arrays(sectors, terminal), layers)
+            own = [(number, sector, table) for number, _, sector, table in sectors]
+            add_mast(mast, sector_arrays(own, field.frame, terminal), layers)
     cells = np.zeros((stop - start, len(items) + 2, STATUS_CODES), dtype=np.int64)
     finish(layers, cells)
     for array in layers:
@@ -187,7 +188,7 @@ def _mast_arrays(field: PathField, first: int, last: int, band_start: int) -> Ma
         status=_read_only(field.status[rows]),
         east_m=((field.col_start - field.mast_col + cols) * field.cell_m).astype(np.float32),
         north_m=north_m.astype(np.float32),
-        bend=_bend_rad_per_m(field.frame),
+        bend=bend_rad_per_m(field.frame),
     )
 
 
@@ -198,7 +199,7 @@ def _read_only(array: NDArray[Any]) -> NDArray[Any]:
     return view
 
 
-def _bend_rad_per_m(frame: LocalFrame) -> NDArray[np.float32]:
+def bend_rad_per_m(frame: LocalFrame) -> NDArray[np.float32]:
     """Arc-to-chord turn per metre east and north: the frame's own, which is linear in the step."""
     step_m = 1e5
     azimuth_deg = frame.true_azimuth_deg([step_m, 0.0], [0.0, step_m])
@@ -206,13 +207,13 @@ def _bend_rad_per_m(frame: LocalFrame) -> NDArray[np.float32]:
     return (np.radians(turn_deg) / step_m).astype(np.float32)
 
 
-def _sector_arrays(
-    sectors: Sequence[tuple[int, PathField, Sector, GainTable]], terminal: Terminal
+def sector_arrays(
+    sectors: Sequence[tuple[int, Sector, GainTable]], frame: LocalFrame, terminal: Terminal
 ) -> SectorArrays:
     """The numbered sectors of one mast for the kernel."""
-    arrays = [table.arrays for _, _, _, table in sectors]
+    arrays = [table.arrays for _, _, table in sectors]
     boresights_rad = np.radians(
-        [table.azimuth_deg - field.frame.convergence_deg for _, field, _, table in sectors]
+        [table.azimuth_deg - frame.convergence_deg for _, _, table in sectors]
     )
     return SectorArrays(
         levels=np.concatenate([own.levels.ravel() for own in arrays]),
@@ -235,11 +236,11 @@ def _sector_arrays(
                     terminal.feeder_loss_db,
                     sector.radio.service_threshold_dbm,
                 )
-                for _, _, sector, _ in sectors
+                for _, sector, _ in sectors
             ],
             dtype=np.float32,
         ),
-        number=np.array([number for number, _, _, _ in sectors], dtype=np.int16),
+        number=np.array([number for number, _, _ in sectors], dtype=np.int16),
     )
 
 

@@ -105,7 +105,7 @@ class Course(NamedTuple):
     last_t: float
     clearing_bulge_m: float  # bulge of the earth where the clearing around the mast ends
     clearing_steps: float  # no sample of any lane further from a cell lies within its clearing
-    spherical_t: float  # up to there the spherical earth adds nothing
+    spherical_t: float  # up to there the spherical earth adds nothing to a receiver of the link
 
 
 @scalar

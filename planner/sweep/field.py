@@ -1,20 +1,15 @@
 """The path field: loss and angle of departure from one mast to every cell around it."""
 
 import math
-from collections.abc import Callable
-from concurrent.futures import ThreadPoolExecutor
 from dataclasses import dataclass
-from typing import Any
 
-import numba
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.errors import Problem, TerrainError
-from planner.geodesy import LocalFrame, local_frame
+from planner.geodesy import LocalFrame
 from planner.physics.diffraction import Polarization
-from planner.physics.free_space import free_space_loss_db_scalar, wavelength_m_scalar
-from planner.sweep.course import fans
+from planner.physics.free_space import free_space_loss_db_scalar
+from planner.sweep.setting import Progress, set_up
 from planner.sweep.state import (
     COMPUTED,
     LEAST_DISTANCE_M,
@@ -26,12 +21,6 @@ from planner.sweep.state import (
 )
 from planner.sweep.walk import walk_fan
 from planner.terrain import Terrain
-from planner.units import EARTH_RADIUS_KM
-
-Progress = Callable[[int, int], None]  # done, total
-
-_SNAP_CELLS = 1e-6  # a mast so near a cell's centre stands on it
-_REPORT_EVERY = 16  # fans; between them the sweep can be interrupted
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -109,97 +98,46 @@ def path_field(
     TerrainError
         The mast stands outside the terrain or on a hole.
     """
-    grid = terrain.grid
-    easting, northing = (float(v) for v in grid.from_geographic(latitude, longitude))
-    row, col = (float(v) for v in grid.row_col(easting, northing))
-    # Coordinates that were computed from a cell's centre come back to within rounding of it.
-    row, col = (round(v) if abs(v - round(v)) < _SNAP_CELLS else v for v in (row, col))
-    place = f"mast at latitude {latitude:.5f}, longitude {longitude:.5f}"
-    if not grid.contains(row, col):
-        raise TerrainError(Problem(where=place, found="a place outside the terrain"))
-    ground_m = float(terrain.standing_elevation_m(row, col))
-    if math.isnan(ground_m):
-        raise TerrainError(Problem(where=place, found="no terrain data under the mast"))
-    frame = local_frame(grid.crs, easting, northing)
-
-    # The scale changes little over a window; 1 % more than the radius is more than enough.
-    reach = math.ceil(radius_m * frame.scale * 1.01 / grid.cell_m) + 1
-    row_start = max(math.floor(row) - reach, 0)
-    row_stop = min(math.ceil(row) + reach + 1, grid.rows)
-    col_start = max(math.floor(col) - reach, 0)
-    col_stop = min(math.ceil(col) + reach + 1, grid.cols)
-    shape = (row_stop - row_start, col_stop - col_start)
-    ground = terrain.ground_elevation_m
-    obstacle = terrain.obstacle_height_m
-    if obstacle is None:
-        obstacle = np.zeros((0, 0), dtype=np.float32)
-        obstacle.flags.writeable = False  # so that the kernel is compiled for one type only
-    mast = Mast(
-        row=float(row),
-        col=float(col),
-        row_start=row_start,
-        col_start=col_start,
-        cell_m=grid.cell_m,
-        scale=frame.scale,
-        scale_gradient_east_per_m=frame.scale_gradient_east_per_m,
-        scale_gradient_north_per_m=frame.scale_gradient_north_per_m,
-        ground_m=ground_m,
+    setting = set_up(
+        terrain,
+        latitude=latitude,
+        longitude=longitude,
+        antenna_height_m=antenna_height_m,
+        receiver_height_m=receiver_height_m,
+        frequency_mhz=frequency_mhz,
+        radius_m=radius_m,
+        k_factor=k_factor,
+        polarization=polarization,
+        obstacle_clearing_m=obstacle_clearing_m,
     )
-    link = Link(
-        tx_height_m=ground_m + antenna_height_m,
-        receiver_height_m=float(receiver_height_m),
-        earth_radius_m=k_factor * EARTH_RADIUS_KM * 1000.0,
-        frequency_mhz=float(frequency_mhz),
-        wavelength_m=wavelength_m_scalar(float(frequency_mhz)),
-        vertical=polarization == "vertical",
-        radius_m=float(radius_m),
-        obstacle_clearing_m=float(obstacle_clearing_m),
-    )
+    mast, link, shape = setting.mast, setting.link, setting.shape
     layers = Layers(
         path_loss_db=np.full(shape, np.nan, dtype=np.float32),
         departure_elevation_deg=np.full(shape, np.nan, dtype=np.float32),
         fresnel_clearance_ratio=np.full(shape, np.nan, dtype=np.float32),
         status=np.full(shape, OUT_OF_RANGE, dtype=np.uint8),
     )
-    _walk_all(fans(reach), (ground, obstacle, mast, link, layers), progress)
-    _compute_own_cell(mast, link, ground, layers)
+    setting.walk_all(walk_fan, (layers,), progress)
+    _compute_own_cell(mast, link, setting.ground, layers)
     for array in layers:
         array.flags.writeable = False
     return PathField(
-        row_start=row_start,
-        col_start=col_start,
-        mast_row=float(row),
-        mast_col=float(col),
-        mast_ground_m=ground_m,
-        frame=frame,
-        cell_m=grid.cell_m,
-        frequency_mhz=float(frequency_mhz),
+        row_start=mast.row_start,
+        col_start=mast.col_start,
+        mast_row=mast.row,
+        mast_col=mast.col,
+        mast_ground_m=mast.ground_m,
+        frame=setting.frame,
+        cell_m=mast.cell_m,
+        frequency_mhz=link.frequency_mhz,
         antenna_height_m=float(antenna_height_m),
-        receiver_height_m=float(receiver_height_m),
-        radius_m=float(radius_m),
+        receiver_height_m=link.receiver_height_m,
+        radius_m=link.radius_m,
         path_loss_db=layers.path_loss_db,
         departure_elevation_deg=layers.departure_elevation_deg,
         fresnel_clearance_ratio=layers.fresnel_clearance_ratio,
         status=layers.status,
     )
-
-
-def _walk_all(
-    units: list[tuple[int, int, int, int]], shared: tuple[Any, ...], progress: Progress | None
-) -> None:
-    """Walk all fans with as many threads as numba is set to use; the kernel holds no lock."""
-    if progress is not None:
-        progress(0, len(units))
-    with ThreadPoolExecutor(numba.get_num_threads()) as pool:
-        pending = [pool.submit(walk_fan, *unit, *shared) for unit in units]
-        try:
-            for done, walked in enumerate(pending, start=1):
-                walked.result()
-                if progress is not None and (done % _REPORT_EVERY == 0 or done == len(units)):
-                    progress(done, len(units))
-        except BaseException:  # an interruption too: do not start what has not begun
-            pool.shutdown(cancel_futures=True)
-            raise
 
 
 def _compute_own_cell(mast: Mast, link: Link, ground: NDArray[np.float32], layers: Layers) -> None:
