@@ -12,6 +12,7 @@ from planner.errors import Problem, TerrainError
 from planner.geodesy import LocalFrame, local_frame
 from planner.physics.diffraction import Polarization
 from planner.physics.free_space import free_space_loss_db_scalar, wavelength_m_scalar
+from planner.sweep.key import mast_name, mast_place
 from planner.sweep.radial import sweep_radials
 from planner.sweep.state import COMPUTED, LEAST_DISTANCE_M, NO_DATA, OUT_OF_RANGE, Link, Mast
 from planner.terrain import Terrain
@@ -97,14 +98,12 @@ def path_field(
         The mast stands outside the terrain or on a hole.
     """
     grid = terrain.grid
-    easting, northing = (float(v) for v in grid.from_geographic(latitude, longitude))
-    row, col = (float(v) for v in grid.row_col(easting, northing))
-    place = f"mast at latitude {latitude:.5f}, longitude {longitude:.5f}"
-    if not grid.contains(row, col):
-        raise TerrainError(Problem(where=place, found="a place outside the terrain"))
+    easting, northing, row, col = mast_place(grid, latitude, longitude)
     ground_m = float(terrain.standing_elevation_m(row, col))
     if math.isnan(ground_m):
-        raise TerrainError(Problem(where=place, found="no terrain data under the mast"))
+        raise TerrainError(
+            Problem(where=mast_name(latitude, longitude), found="no terrain data under the mast")
+        )
     frame = local_frame(grid.crs, easting, northing)
 
     # The scale changes little over a window; 1 % more than the radius is more than enough.
