@@ -500,13 +500,14 @@ def test_the_part_that_is_seen_gives_the_field_of_the_whole(place, radius_m):
 @pytest.mark.parametrize("radius_m", [400.0, 1000.0])
 def test_lowering_looks_no_further_than_the_part(radius_m):
     """On a surface the mast stands as low on the part as on the whole, also beyond the radius."""
-    terrain = hills(kind="surface", lowering_radius_m=700.0)
+    ground = hills().ground_elevation_m.copy()
+    ground[28, 36] = -7.0  # 615 m north of the mast
+    terrain = hills(ground_elevation_m=ground, kind="surface", lowering_radius_m=700.0)
     mast = {"latitude": MAST[0], "longitude": MAST[1]}
     part = seen_part(terrain, **mast, radius_m=radius_m)
     settings = {**SETTINGS, **mast, "radius_m": radius_m}
-    expected = path_field(terrain, **settings).mast_ground_m
-    assert path_field(part, **settings).mast_ground_m == expected
-    assert expected < 1.0  # lowest of some 600 cells of 0 to 60 m
+    assert path_field(terrain, **settings).mast_ground_m == -7.0
+    assert path_field(part, **settings).mast_ground_m == -7.0
 
 
 # The unit of work.

@@ -2,6 +2,7 @@
 
 import json
 import math
+import re
 import shutil
 import signal
 import subprocess
@@ -411,6 +412,25 @@ def test_path_fields_beyond_the_bound_are_removed_after_the_run(tmp_path, monkey
     kept = {file.name for file in (tmp_path / "out" / "path_fields").iterdir()}
     assert kept == {Path(field["file"]).name for field in last.record["path_fields"]}
     assert len(kept) == 3
+
+
+@pytest.mark.skipif(not Path("/proc/self/smaps").exists(), reason="no /proc/self/smaps here")
+def test_path_fields_take_memory_only_while_they_are_looked_at(tmp_path):
+    """Between stages none of them is resident, however many there are."""
+    resident: dict[tuple[str, float], int] = {}
+
+    def look(stage: str, share: float) -> None:
+        blocks = re.split(r"\n(?=[0-9a-f]+-[0-9a-f]+ )", Path("/proc/self/smaps").read_text())
+        resident[stage, share] = sum(
+            int(re.search(r"^Rss: +(\d+) kB", block, re.M)[1])
+            for block in blocks
+            if str(tmp_path) in block and ".pathfield" in block
+        )
+
+    run_plan(read_plan(two_towers(tmp_path)), progress=look)
+    assert resident["layers", 0.0] == 0
+    assert resident["write layers", 0.0] == 0
+    assert resident["write map", 0.0] == 0
 
 
 def test_a_run_that_cannot_keep_path_fields_says_where(tmp_path):

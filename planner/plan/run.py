@@ -16,7 +16,7 @@ from planner.errors import PlanError, Problem
 from planner.handout.offline_map import write_offline_map
 from planner.io.atomic import replaced
 from planner.io.customer_files import read_customer_list, write_customers_csv, write_customers_gpkg
-from planner.io.path_store import PathStore
+from planner.io.path_store import PathStore, release_pages
 from planner.io.terrain_files import read_terrain
 from planner.network import Customer, Sector, Tower
 from planner.plan.checks import PATH_FIELDS_FOLDER, clashes
@@ -106,6 +106,8 @@ def run_plan(
             for sector in tower.sectors
         ]
         coverage = combine(terrain.grid.rows, terrain.grid.cols, items, plan.terminal)
+        for field, _, _ in items:
+            release_pages(field)
     answers: tuple[CustomerAnswer, ...] = ()
     if customers:
         with stages.stage("check customers") as report:
@@ -251,4 +253,5 @@ def _write_path_losses(
             if number > 0:
                 name += f"_{height_m:g}m_{frequency_mhz:g}mhz"
             names.append(write_path_loss(folder, f"{name}.tif", plan, terrain, field))
+            release_pages(field)
     return names
