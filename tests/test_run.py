@@ -2,7 +2,11 @@
 
 import json
 import math
+import re
 import shutil
+import signal
+import subprocess
+import sys
 from pathlib import Path
 
 import geopandas
@@ -14,9 +18,12 @@ import rasterio.warp
 from places import jacksboro_degrees
 
 from planner.customers import check_customers
+from planner.errors import OutputError, PlanError
+from planner.io.path_store import PathStore
 from planner.io.terrain_files import read_terrain
 from planner.plan import read_plan
 from planner.plan.demo import demo_plan_path
+from planner.plan.path_tasks import run_task, tower_tasks
 from planner.plan.run import RunResult, run_plan
 
 SITES = Path(__file__).parents[1] / "demo_sites"
@@ -106,8 +113,20 @@ file = "customers.csv"
     return path
 
 
+def contents(folder: Path) -> dict[str, bytes]:
+    """Every file of a run but the record, which holds the clock, by its path in the folder."""
+    return {
+        str(file.relative_to(folder)): file.read_bytes()
+        for file in sorted(folder.rglob("*"))
+        if file.is_file() and file.name != "run.json"
+    }
+
+
 def test_a_demo_site_gives_every_file_that_is_promised(harrow):
-    """Layers, customer tables, map and record; nothing else but the classes' side file."""
+    """Layers, customer tables, map, record and kept path fields; else only the classes' side file.
+
+    The record names the file of each path field.
+    """
     assert sorted(file.name for file in harrow.folder.iterdir()) == sorted(
         [
             *LAYERS,
@@ -116,9 +135,13 @@ def test_a_demo_site_gives_every_file_that_is_promised(harrow):
             "customers.csv",
             "customers.gpkg",
             "map.html",
+            "path_fields",
             "run.json",
         ]
     )
+    [kept] = harrow.record["path_fields"]
+    assert (kept["tower"], kept["source"]) == ("shoulder", "computed")
+    assert [harrow.folder / kept["file"]] == list((harrow.folder / "path_fields").iterdir())
     assert harrow.demands_met
     assert json.loads((harrow.folder / "run.json").read_text(encoding="utf-8")) == harrow.record
 
@@ -180,9 +203,7 @@ def test_customers_rows_and_map_pixels_agree(harrow):
 def test_the_same_inputs_give_the_same_bytes(harrow, tmp_path):
     """A second run writes the same bytes in every file but the record, which holds the clock."""
     again = run_plan(read_plan(SITES / "harrow_vale" / "plan.toml"), folder=tmp_path)
-    for file in sorted(harrow.folder.iterdir()):
-        if file.name != "run.json":
-            assert (tmp_path / file.name).read_bytes() == file.read_bytes(), file.name
+    assert contents(tmp_path) == contents(harrow.folder)
     first, second = dict(harrow.record), dict(again.record)
     assert first.pop("stages") != second.pop("stages")
     assert first == second
@@ -233,8 +254,11 @@ def test_only_the_layers_asked_for_are_written(tmp_path):
     assert tifs == ["best_server.tif"]
 
 
-def test_progress_names_the_stages_and_an_interrupt_leaves_no_file(tmp_path):
-    """Stages report from 0 to 1; Ctrl-C during the sweep leaves the output folder untouched."""
+def test_progress_names_the_stages_and_an_interrupt_leaves_no_result(tmp_path):
+    """Stages report from 0 to 1; Ctrl-C during the second of a tower's two fields keeps the first.
+
+    Nothing else is written, and the next run computes the second only.
+    """
     plan = read_plan(jacksboro_plan(tmp_path))
     seen: dict[str, list[float]] = {}
 
@@ -245,9 +269,193 @@ def test_progress_names_the_stages_and_an_interrupt_leaves_no_file(tmp_path):
 
     with pytest.raises(KeyboardInterrupt):
         run_plan(plan, progress=interrupt)
-    assert not (tmp_path / "out").exists()
+    [first] = contents(tmp_path / "out")
+    assert first.startswith("path_fields/")
     assert seen["read terrain"][0] == 0.0
     assert seen["read terrain"][-1] == 1.0
+    record = run_plan(plan).record
+    assert sources(record) == {("ridge", 30.0): "reused", ("ridge", 24.0): "computed"}
+
+
+def sources(record: dict) -> dict[tuple[str, float], str]:
+    """Whether each path field was computed or reused, by tower and antenna height."""
+    return {
+        (kept["tower"], kept["antenna_height_m"]): kept["source"] for kept in record["path_fields"]
+    }
+
+
+def two_towers(folder: Path, *edits: tuple[str, str]) -> Path:
+    """The plan on the USGS grid with a second tower, and with texts replaced."""
+    path = jacksboro_plan(folder)
+    text = path.read_text(encoding="utf-8")
+    text = text.replace(
+        "[customers]",
+        """[[tower]]
+id = "knoll"
+latitude = 36.62
+longitude = -84.20
+[[tower.sector]]
+id = "knoll-1"
+antenna = "panel"
+radio = "access"
+antenna_height_m = 20
+azimuth_deg = 100
+[customers]""",
+    )
+    for old, new in edits:
+        assert old in text
+        text = text.replace(old, new)
+    path.write_text(text, encoding="utf-8")
+    return path
+
+
+KILLED_RUN = """
+import os, signal, sys
+from pathlib import Path
+from planner.plan import read_plan
+from planner.plan.run import run_plan
+
+def kill(stage, share):
+    if stage == "path field knoll" and share > 0.5:
+        os.kill(os.getpid(), signal.SIGKILL)
+
+run_plan(read_plan(Path(sys.argv[1])), folder=Path(sys.argv[2]), progress=kill)
+"""
+
+
+def test_a_killed_run_goes_on_where_it_was(tmp_path):
+    """kill -9 within the second mast: the first mast's fields are reused, and every file is the
+    same to the byte as from a run that nothing interrupted."""
+    path = two_towers(tmp_path)
+    killed, whole = tmp_path / "killed", tmp_path / "whole"
+    ended = subprocess.run([sys.executable, "-c", KILLED_RUN, str(path), str(killed)], check=False)
+    assert ended.returncode == -signal.SIGKILL
+    assert len(list((killed / "path_fields").iterdir())) == 2
+    assert not (killed / "run.json").exists()
+    resumed = run_plan(read_plan(path), folder=killed)
+    assert sources(resumed.record) == {
+        ("ridge", 30.0): "reused",
+        ("ridge", 24.0): "reused",
+        ("knoll", 20.0): "computed",
+    }
+    names = [stage["name"] for stage in resumed.record["stages"]]
+    assert "path field ridge reused" in names
+    assert "path field knoll" in names
+    uninterrupted = run_plan(read_plan(path), folder=whole)
+    assert set(sources(uninterrupted.record).values()) == {"computed"}
+    assert contents(killed) == contents(whole)
+
+
+def test_only_what_decides_paths_computes_anew(tmp_path):
+    """Aim, power and antenna reuse every field; one sector's height computes one; a damaged file
+    is computed anew, with a warning in the record; other towers may come and go."""
+    folder = tmp_path / "out"
+    first = run_plan(read_plan(two_towers(tmp_path)), folder=folder).record
+    aimed = (
+        ("mechanical_downtilt_deg = 2", "mechanical_downtilt_deg = 6"),
+        ("azimuth_deg = 220", "azimuth_deg = 10\nelectrical_downtilt_deg = 3"),
+        ("transmit_power_dbm = 19", "transmit_power_dbm = 12"),
+        ("azimuth_beamwidth_deg = 70", "azimuth_beamwidth_deg = 90"),
+    )
+    again = run_plan(read_plan(two_towers(tmp_path, *aimed)), folder=folder).record
+    assert set(sources(again).values()) == {"reused"}
+    assert again["counts"]["cells_served"] != first["counts"]["cells_served"]
+    fresh = run_plan(read_plan(two_towers(tmp_path, *aimed)), folder=tmp_path / "fresh").record
+    assert again["counts"] == fresh["counts"]
+    assert contents(folder) == contents(tmp_path / "fresh")
+
+    damaged = folder / first["path_fields"][0]["file"]
+    content = damaged.read_bytes()
+    damaged.write_bytes(content[:-9])
+    raised = [("antenna_height_m = 20", "antenna_height_m = 21")]
+    last = run_plan(read_plan(two_towers(tmp_path, *raised)), folder=folder).record
+    assert sources(last) == {
+        ("ridge", 30.0): "computed",
+        ("ridge", 24.0): "reused",
+        ("knoll", 21.0): "computed",
+    }
+    [warning] = [text for text in last["warnings"] if "path field" in text]
+    assert str(damaged) in warning
+    assert damaged.read_bytes() == content
+
+
+def test_a_field_computed_elsewhere_is_used(tmp_path):
+    """Two processes given the same task as JSON leave the one file that a run then finds."""
+    plan = read_plan(two_towers(tmp_path))
+    [task] = tower_tasks(plan, plan.towers[1]).values()
+    folder = tmp_path / "out" / "path_fields"
+    script = (
+        "import sys; from pathlib import Path\n"
+        "from planner.plan.path_tasks import PathFieldTask, run_task\n"
+        "print(run_task(PathFieldTask.from_json(sys.argv[1]), Path(sys.argv[2])))"
+    )
+    command = [sys.executable, "-c", script, task.to_json(), str(folder)]
+    workers = [subprocess.Popen(command, stdout=subprocess.PIPE, text=True) for _ in range(2)]
+    told = {worker.communicate()[0].strip() for worker in workers}
+    assert [worker.returncode for worker in workers] == [0, 0]
+    assert {str(file) for file in folder.iterdir()} == told
+    written = {file: file.stat().st_ino for file in folder.iterdir()}
+    assert run_task(task, folder) == Path(told.pop())
+    assert {file: file.stat().st_ino for file in folder.iterdir()} == written
+    record = run_plan(plan).record
+    assert sources(record)["knoll", 20.0] == "reused"
+    assert list(sources(record).values()).count("computed") == 2
+
+
+def test_path_fields_beyond_the_bound_are_removed_after_the_run(tmp_path, monkeypatch):
+    """Those that the run has used stay."""
+    monkeypatch.setattr(PathStore.prune, "__defaults__", (0,))
+    run_plan(read_plan(two_towers(tmp_path)))
+    last = run_plan(
+        read_plan(two_towers(tmp_path, ("frequency_mhz = 5600", "frequency_mhz = 5800")))
+    )
+    kept = {file.name for file in (tmp_path / "out" / "path_fields").iterdir()}
+    assert kept == {Path(field["file"]).name for field in last.record["path_fields"]}
+    assert len(kept) == 3
+
+
+@pytest.mark.skipif(not Path("/proc/self/smaps").exists(), reason="no /proc/self/smaps here")
+def test_path_fields_take_memory_only_while_they_are_looked_at(tmp_path):
+    """Between stages none of them is resident, however many there are."""
+    resident: dict[tuple[str, float], int] = {}
+
+    def look(stage: str, share: float) -> None:
+        blocks = re.split(r"\n(?=[0-9a-f]+-[0-9a-f]+ )", Path("/proc/self/smaps").read_text())
+        resident[stage, share] = sum(
+            int(re.search(r"^Rss: +(\d+) kB", block, re.M)[1])
+            for block in blocks
+            if str(tmp_path) in block and ".pathfield" in block
+        )
+
+    run_plan(read_plan(two_towers(tmp_path)), progress=look)
+    assert resident["layers", 0.0] == 0
+    assert resident["write layers", 0.0] == 0
+    assert resident["write map", 0.0] == 0
+
+
+def test_a_run_that_cannot_keep_path_fields_says_where(tmp_path):
+    """Before the sweep, with the folder's name."""
+    plan = read_plan(jacksboro_plan(tmp_path))
+    (tmp_path / "out").mkdir()
+    (tmp_path / "out" / "path_fields").write_bytes(b"in the way")
+    stages = []
+    with pytest.raises(OutputError) as caught:
+        run_plan(plan, progress=lambda stage, share: stages.append((stage, share)))
+    assert str(tmp_path / "out" / "path_fields") in str(caught.value)
+    assert stages[-1] == ("path field ridge", 0.0)
+    assert (tmp_path / "out" / "path_fields").read_bytes() == b"in the way"
+
+
+@pytest.mark.parametrize("name", ["out/path_fields/customers.csv", "out/path_fields"])
+def test_no_input_may_lie_where_path_fields_are_kept(tmp_path, name):
+    """The plan is refused: that folder may be deleted at will."""
+    path = jacksboro_plan(tmp_path)
+    (tmp_path / name).parent.mkdir(parents=True, exist_ok=True)
+    shutil.copy(tmp_path / "customers.csv", tmp_path / name)
+    text = path.read_text(encoding="utf-8")
+    path.write_text(text.replace('"customers.csv"', f'"{name}"'), encoding="utf-8")
+    with pytest.raises(PlanError, match="overwrite the input"):
+        read_plan(path)
 
 
 def test_the_demo_site_of_the_package_is_the_one_in_the_source_tree():

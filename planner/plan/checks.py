@@ -24,6 +24,7 @@ OUTPUT_FILES = (
     *("received_signal.tif", "best_server.tif", "server_margin.tif"),
     *("customers.csv", "customers.gpkg", "map.html", "run.json"),
 )
+PATH_FIELDS_FOLDER = "path_fields"  # within the output folder
 
 
 def add_problems_between_keys(findings: Findings, rest: Rest) -> None:
@@ -309,16 +310,18 @@ def _trouble_with_folder(folder: Path) -> str:
 
 
 def clashes(folder: Path, inputs: list[Path]) -> list[Path]:
-    """The inputs that results written into ``folder`` would overwrite."""
+    """The inputs that results written into ``folder`` would overwrite, or whose folder they use."""
 
     def is_result(name: str) -> bool:
         lower = name.lower()
         is_path_loss = lower.startswith("path_loss_") and lower.endswith(".tif")
-        return lower in OUTPUT_FILES or is_path_loss
+        return lower in (*OUTPUT_FILES, PATH_FIELDS_FOLDER) or is_path_loss
 
     folder_itself = os.path.realpath(folder)
-    return [
-        path
-        for path in inputs
-        if is_result(path.name) and os.path.realpath(path.parent) == folder_itself
-    ]
+    path_fields = os.path.realpath(Path(folder) / PATH_FIELDS_FOLDER)
+
+    def is_hit(path: Path) -> bool:
+        parent = os.path.realpath(path.parent)
+        return (is_result(path.name) and parent == folder_itself) or parent == path_fields
+
+    return [path for path in inputs if is_hit(path)]

@@ -32,9 +32,13 @@ def run_record(
     answers: tuple[CustomerAnswer, ...],
     stages: list[dict[str, Any]],
     files: list[str],
+    path_fields: list[dict[str, Any]],
     notes: tuple[str, ...] = (),
 ) -> dict[str, Any]:
-    """Everything that run.json holds; only ``stages`` holds the clock."""
+    """Everything that run.json holds.
+
+    Only ``stages`` holds the clock, and only ``path_fields`` tells what an earlier run had left.
+    """
     excesses = eirp_excesses(plan)
     counts = coverage.counts
     verdicts = [answer.verdict for answer in answers]
@@ -89,6 +93,7 @@ def run_record(
             }
             for number, sector in enumerate(plan.sectors, start=1)
         ],
+        "path_fields": path_fields,
         "eirp_above_limit": [excess.sector_id for excess in excesses],
         "warnings": list(dict.fromkeys(warnings)),
         "stages": stages,

@@ -16,16 +16,25 @@ from planner.errors import PlanError, Problem
 from planner.handout.offline_map import write_offline_map
 from planner.io.atomic import replaced
 from planner.io.customer_files import read_customer_list, write_customers_csv, write_customers_gpkg
+from planner.io.path_store import PathStore, release_pages
 from planner.io.terrain_files import read_terrain
 from planner.network import Customer, Sector, Tower
-from planner.plan.checks import clashes
+from planner.plan.checks import PATH_FIELDS_FOLDER, clashes
 from planner.plan.outputs import write_coverage_layers, write_path_loss
+from planner.plan.path_tasks import (
+    PathFieldTask,
+    computed_field,
+    field_key,
+    kept_field,
+    tower_tasks,
+)
 from planner.plan.read import Plan
 from planner.plan.record import input_files, run_record
-from planner.sweep import PathField, path_field
+from planner.sweep import PathField
 from planner.terrain import Terrain
 
 Progress = Callable[[str, float], None]  # what is being done, share done from 0 to 1
+_Fields = dict[tuple[float, float], PathField]  # of one tower, by antenna height and frequency
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -63,7 +72,9 @@ def run_plan(
     """Compute everything that the plan asks for and write it into the output folder.
 
     Raises InputError for wrong inputs, before anything is written, and OutputError where a file
-    cannot be written. Every file is written beside its target and renamed into place.
+    cannot be written. Every file is written beside its target and renamed into place. Path fields
+    are kept in the output folder as they are computed; a later run, also after this one was
+    interrupted, uses those that still hold.
     """
     folder = plan.output_folder if folder is None else folder
     stages = _Stages(progress)
@@ -85,10 +96,8 @@ def run_plan(
             names=[tower.id for tower in towers],
             progress=report,
         )
-    fields = {}
-    for tower in towers:
-        with stages.stage(f"path field {tower.id}") as report:
-            fields[tower.id] = _tower_fields(plan, terrain, tower, report)
+    store = PathStore(folder / PATH_FIELDS_FOLDER)
+    fields, path_fields = _path_fields(plan, terrain, towers, store, stages)
     sectors = plan.sectors
     with stages.stage("layers"):
         items = [
@@ -97,6 +106,8 @@ def run_plan(
             for sector in tower.sectors
         ]
         coverage = combine(terrain.grid.rows, terrain.grid.cols, items, plan.terminal)
+        for field, _, _ in items:
+            release_pages(field)
     answers: tuple[CustomerAnswer, ...] = ()
     if customers:
         with stages.stage("check customers") as report:
@@ -134,8 +145,16 @@ def run_plan(
             online_base_map=plan.online_base_map,
         )
         files.append("map.html")
+    store.prune()
     record = run_record(
-        plan, terrain, coverage, answers, stages.seconds, [*files, "run.json"], notes
+        plan,
+        terrain,
+        coverage,
+        answers,
+        stages.seconds,
+        [*files, "run.json"],
+        path_fields,
+        (*notes, *store.warnings),
     )
     with replaced(folder / "run.json") as target:
         target.write_text(json.dumps(record, indent=2, ensure_ascii=False) + "\n", encoding="utf-8")
@@ -156,35 +175,58 @@ def _refuse_overwriting(plan: Plan, folder: Path) -> None:
         )
 
 
-def field_key(sector: Sector) -> tuple[float, float]:
-    """What a path field depends on within one tower: antenna height and frequency."""
-    return sector.antenna_height_m, sector.radio.frequency_mhz
+def _path_fields(
+    plan: Plan, terrain: Terrain, towers: tuple[Tower, ...], store: PathStore, stages: _Stages
+) -> tuple[dict[str, _Fields], list[dict[str, Any]]]:
+    """Every tower's path fields, from the store as far as it has them, and what to record."""
+    tasks = {tower.id: tower_tasks(plan, tower) for tower in towers}
+    keys: dict[PathFieldTask, str] = {}
+    kept: dict[PathFieldTask, PathField] = {}
+    with stages.stage("look up path fields") as report:
+        for number, tower in enumerate(towers):
+            report(number / len(towers))
+            for task in tasks[tower.id].values():
+                keys[task] = task.key(terrain)
+                field = kept_field(task, keys[task], terrain, store)
+                if field is not None:
+                    kept[task] = field
+    fields = {}
+    for tower in towers:
+        reused = all(task in kept for task in tasks[tower.id].values())
+        with stages.stage(f"path field {tower.id}{' reused' if reused else ''}") as report:
+            fields[tower.id] = _tower_fields(tasks[tower.id], keys, kept, terrain, store, report)
+    record = [
+        {
+            "tower": tower.id,
+            "antenna_height_m": height_m,
+            "frequency_mhz": frequency_mhz,
+            "source": "reused" if task in kept else "computed",
+            "file": f"{PATH_FIELDS_FOLDER}/{store.path(keys[task]).name}",
+        }
+        for tower in towers
+        for (height_m, frequency_mhz), task in tasks[tower.id].items()
+    ]
+    return fields, record
 
 
 def _tower_fields(
-    plan: Plan, terrain: Terrain, tower: Tower, report: Callable[[float], None]
-) -> dict[tuple[float, float], PathField]:
-    keys = list(dict.fromkeys(field_key(sector) for sector in tower.sectors))
+    tasks: dict[tuple[float, float], PathFieldTask],
+    keys: dict[PathFieldTask, str],
+    kept: dict[PathFieldTask, PathField],
+    terrain: Terrain,
+    store: PathStore,
+    report: Callable[[float], None],
+) -> _Fields:
     fields = {}
-
-    for number, (height_m, frequency_mhz) in enumerate(keys):
+    for number, (height_and_frequency, task) in enumerate(tasks.items()):
 
         def report_portion(done: int, total: int, before: int = number) -> None:
-            report((before + done / total) / len(keys))
+            report((before + done / total) / len(tasks))
 
-        fields[height_m, frequency_mhz] = path_field(
-            terrain,
-            latitude=tower.latitude,
-            longitude=tower.longitude,
-            antenna_height_m=height_m,
-            receiver_height_m=plan.terminal.antenna_height_m,
-            frequency_mhz=frequency_mhz,
-            radius_m=plan.radius_m,
-            k_factor=plan.k_factor,
-            polarization=plan.polarization,
-            obstacle_clearing_m=plan.obstacle_clearing_m,
-            progress=report_portion,
-        )
+        field = kept.get(task)
+        if field is None:
+            field = computed_field(task, keys[task], terrain, store, report_portion)
+        fields[height_and_frequency] = field
     return fields
 
 
@@ -201,7 +243,7 @@ def _write_path_losses(
     folder: Path,
     plan: Plan,
     terrain: Terrain,
-    fields: dict[str, dict[tuple[float, float], PathField]],
+    fields: dict[str, _Fields],
 ) -> list[str]:
     """One file per tower; a further height or frequency on it gets a file that says which."""
     names = []
@@ -211,4 +253,5 @@ def _write_path_losses(
             if number > 0:
                 name += f"_{height_m:g}m_{frequency_mhz:g}mhz"
             names.append(write_path_loss(folder, f"{name}.tif", plan, terrain, field))
+            release_pages(field)
     return names

@@ -15,13 +15,13 @@ from planner.geodesy import LocalFrame, local_frame
 from planner.physics.diffraction import Polarization
 from planner.physics.free_space import wavelength_m_scalar
 from planner.sweep.course import fans
+from planner.sweep.key import mast_name, mast_place
 from planner.sweep.state import Link, Mast
 from planner.terrain import Terrain
 from planner.units import EARTH_RADIUS_KM
 
 Progress = Callable[[int, int], None]  # done, total
 
-_SNAP_CELLS = 1e-6  # a mast so near a cell's centre stands on it
 _REPORT_EVERY = 16  # fans; between them the sweep can be interrupted
 
 
@@ -74,16 +74,12 @@ def set_up(
 ) -> Setting:
     """The setting for a mast; parameters and errors as for :func:`planner.sweep.path_field`."""
     grid = terrain.grid
-    easting, northing = (float(v) for v in grid.from_geographic(latitude, longitude))
-    row, col = (float(v) for v in grid.row_col(easting, northing))
-    # Coordinates that were computed from a cell's centre come back to within rounding of it.
-    row, col = (round(v) if abs(v - round(v)) < _SNAP_CELLS else v for v in (row, col))
-    place = f"mast at latitude {latitude:.5f}, longitude {longitude:.5f}"
-    if not grid.contains(row, col):
-        raise TerrainError(Problem(where=place, found="a place outside the terrain"))
+    easting, northing, row, col = mast_place(grid, latitude, longitude)
     ground_m = float(terrain.standing_elevation_m(row, col))
     if math.isnan(ground_m):
-        raise TerrainError(Problem(where=place, found="no terrain data under the mast"))
+        raise TerrainError(
+            Problem(where=mast_name(latitude, longitude), found="no terrain data under the mast")
+        )
     frame = local_frame(grid.crs, easting, northing)
 
     # The scale changes little over a window; 1 % more than the radius is more than enough.
@@ -98,8 +94,8 @@ def set_up(
         obstacle = np.zeros((0, 0), dtype=np.float32)
         obstacle.flags.writeable = False  # so that the kernel is compiled for one type only
     mast = Mast(
-        row=float(row),
-        col=float(col),
+        row=row,
+        col=col,
         row_start=row_start,
         col_start=col_start,
         cell_m=grid.cell_m,
