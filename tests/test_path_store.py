@@ -170,7 +170,7 @@ def flipped(content: bytes, place: int) -> bytes:
         (lambda content: content[:-1], "bytes instead of"),
         (lambda content: content[: len(content) // 2], "bytes instead of"),
         (lambda content: content + b"\0", "bytes instead of"),
-        (lambda content: flipped(content, len(content) // 3), "path_loss_db is damaged"),
+        (lambda content: flipped(content, len(content) // 5), "path_loss_db is damaged"),
         (lambda content: flipped(content, len(content) - 1000), "status is damaged"),
         (lambda content: with_header(content, b"abab", b"cdcd"), "another field"),
         (lambda content: with_header(content, b'"data_bytes"', b'"bytes"'), "header lacks"),
@@ -598,4 +598,4 @@ def test_a_field_computed_for_the_store_is_in_the_terrain_of_the_plan(tmp_path, 
     assert kept.mast_row == pytest.approx(direct.mast_row, abs=1e-9)
     assert kept.mast_col == pytest.approx(direct.mast_col, abs=1e-9)
     assert not kept.path_loss_db.flags.owndata
-    assert progress[-1] == (40, 40)
+    assert progress[-1][0] == progress[-1][1] > 0

@@ -65,7 +65,7 @@ def test_every_key_arrives_in_its_unit(tmp_path: Path) -> None:
 def test_defaults(tmp_path: Path) -> None:
     """What a plan leaves out is what the docs page says."""
     plan = read_plan(write_plan(tmp_path))
-    assert (plan.grid_crs, plan.cell_m, plan.obstacle_clearing_m) == (None, None, 0.0)
+    assert (plan.grid_crs, plan.cell_m, plan.obstacle_clearing_m) == (None, None, 50.0)
     assert (plan.k_factor, plan.polarization) == (4.0 / 3.0, "vertical")
     assert plan.magnetic_date == datetime.date(2026, 1, 1)
     assert plan.layers == ("received_signal", "best_server", "server_margin", "path_loss")

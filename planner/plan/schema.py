@@ -113,7 +113,7 @@ class ModelTable(Table):
     polarization: Literal["vertical", "horizontal"] = _words(
         '"vertical" or "horizontal"', default="vertical"
     )
-    obstacle_clearing_m: float = _number(0, 1000, "m", default=0.0)
+    obstacle_clearing_m: float = _number(0, 1000, "m", default=50.0)
     magnetic_date: datetime.date = Field(
         default=datetime.date(2026, 1, 1),
         ge=datetime.date(1990, 1, 1),
