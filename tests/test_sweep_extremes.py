@@ -39,9 +39,9 @@ def test_bounds_change_no_result(samples, roughness_m):
     blocks = samples // BLOCK + 2
     narrow = np.zeros(NARROW_ROWS * LANES, dtype=np.float32)
     narrow[SURFACE_SLOPE : SURFACE_SLOPE + LANES] = -np.inf
-    tops = [np.zeros((blocks // n + 1, LANES), dtype=np.float32) for n in (1, GROUP, REGION)]
+    lids = [np.zeros((2 * (blocks // n + 1), LANES), dtype=np.float32) for n in (1, GROUP, REGION)]
     for sample in range(samples):
-        raise_horizon(narrow, surface, *tops, LANES, sample)
+        raise_horizon(narrow, surface, *lids, LANES, sample)
     slopes = surface[:samples] / np.arange(1.0, samples + 1.0)[:, np.newaxis]
     np.testing.assert_allclose(
         narrow[SURFACE_SLOPE : SURFACE_SLOPE + LANES], slopes.max(axis=0), rtol=1e-6
@@ -61,7 +61,7 @@ def test_bounds_change_no_result(samples, roughness_m):
             narrow,
             surface,
             surface.ravel(),
-            *tops,
+            *lids,
             *edges,
             root,
             *rows,
@@ -85,13 +85,13 @@ def test_what_cannot_be_beaten_is_left_alone():
     """A lane that is not wanted starts at infinity and stays there; a floor stays where higher."""
     surface = np.full((40, LANES), -50.0, dtype=np.float32)
     narrow = np.zeros(NARROW_ROWS * LANES, dtype=np.float32)
-    tops = [np.full((4, LANES), -50.0, dtype=np.float32) for _ in range(3)]
+    lids = [np.full((8, LANES), -50.0, dtype=np.float32) for _ in range(3)]
     edges = np.zeros(5, dtype=np.float32), np.zeros(5, dtype=np.float32)
     rows = np.zeros(BLOCK, dtype=np.float32), np.zeros(BLOCK, dtype=np.float32)
     root = (1.0 / np.sqrt(np.arange(1.0, 41.0))).astype(np.float32)
     narrow[BEST_TANGENT : BEST_TANGENT + LANES] = np.inf
     narrow[BEST_NEAR : BEST_NEAR + LANES] = -1e-3
     recalled = np.zeros(1 + 2 * RECALLED, dtype=np.int64)
-    search(narrow, surface, surface.ravel(), *tops, *edges, root, *rows, recalled, LANES, 40, 43.0)
+    search(narrow, surface, surface.ravel(), *lids, *edges, root, *rows, recalled, LANES, 40, 43.0)
     assert (narrow[BEST_TANGENT : BEST_TANGENT + LANES] == math.inf).all()
     assert (narrow[BEST_NEAR : BEST_NEAR + LANES] == np.float32(-1e-3)).all()

@@ -156,7 +156,7 @@ def walk_heights(
     wedge = wedge_of(wedge_number, ground, mast, *ladder.served.shape)
     narrow, wide, place = fan.narrow, fan.wide, fan.place
     bent_ground, surface = fan.bent_ground, fan.bent_surface
-    block_top, group_top, region_top = fan.block_top, fan.group_top, fan.region_top
+    block_lid, group_lid, region_lid = fan.block_lid, fan.group_lid, fan.region_lid
     steepness, weight, root = fan.edge_steepness, fan.edge_weight, fan.root_steepness
     row_steepness, row_weight, recalled = fan.row_steepness, fan.row_weight, fan.recalled
     flat_surface = surface.reshape(surface.size)
@@ -186,9 +186,9 @@ def walk_heights(
             narrow,
             bent_ground,
             surface,
-            block_top,
-            group_top,
-            region_top,
+            block_lid,
+            group_lid,
+            region_lid,
             course,
             included,
             samples,
@@ -232,9 +232,9 @@ def walk_heights(
                     bent_ground,
                     surface,
                     flat_surface,
-                    block_top,
-                    group_top,
-                    region_top,
+                    block_lid,
+                    group_lid,
+                    region_lid,
                     steepness,
                     weight,
                     root,
@@ -259,7 +259,7 @@ def walk_heights(
                     single = bottom_step == top_step
                     if single and spherical and narrow[SPHERE + lane] > f4(0.0):
                         narrow[LOSS + lane] += excess_over_sphere_db(
-                            narrow, bent_ground, block_top, lane, far, t, steps, mast, link
+                            narrow, bent_ground, block_lid, lane, far, t, steps, mast, link
                         )
                     loss = narrow[LOSS + lane]
                     # A stretch is not dropped for what rounding may have done.

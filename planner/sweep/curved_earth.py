@@ -69,7 +69,7 @@ def smooth_bullington_loss_db(
 def obstruction(
     narrow: NDArray,
     ground: NDArray,
-    block_top: NDArray,
+    block_lid: NDArray,
     lane: int,
     samples: int,
     t: float,
@@ -80,7 +80,7 @@ def obstruction(
     """How high bare ground without curvature rises above the ray, and its steepest slope from the
     receiver less the ray's; per step. Both are -inf where nothing does.
 
-    Blocks are passed over where their highest point, not bent, can raise neither.
+    Blocks are passed over where their lid, not bent, can raise neither.
     """
     ray = rx_height / steps
     per_line = t / steps
@@ -92,7 +92,8 @@ def obstruction(
     while i < samples:
         if i % BLOCK == 0 and i + BLOCK <= samples:
             near, far = i + 1.0, float(i + BLOCK)
-            bound = block_top[i // BLOCK, lane] + far * far * bulge * (1.0 + abs(drift) * far)
+            lid = max(block_lid[2 * (i // BLOCK), lane], block_lid[2 * (i // BLOCK) + 1, lane])
+            bound = lid + far * far * bulge * (1.0 + abs(drift) * far)
             bound -= min(ray * near, ray * far)
             if bound <= highest and bound <= steepest * (steps - far):
                 i += BLOCK
@@ -116,7 +117,7 @@ def obstruction(
 def excess_over_sphere_db(
     narrow: NDArray,
     ground: NDArray,
-    block_top: NDArray,
+    block_lid: NDArray,
     lane: int,
     samples: int,
     t: float,
@@ -135,7 +136,7 @@ def excess_over_sphere_db(
     tx_slope = narrow[CELL_GROUND_SLOPE + lane] - rx_height / steps
     if tx_slope > 0.0:
         highest, rx_slope = obstruction(
-            narrow, ground, block_top, lane, samples, t, steps, rx_height, link
+            narrow, ground, block_lid, lane, samples, t, steps, rx_height, link
         )
         tx_surface, rx_surface = smooth_surface_ends(
             float(narrow[V1 + lane]),

@@ -8,8 +8,8 @@ so all lanes share it. With u steps from mast to cell, sample i at step i + 1 an
     tangent:  (height - receiver) / k                          slope per step
     nu:       (height - slope * (i + 1)) / sqrt((i + 1) * k)   times sqrt(2 u^2 / (wavelength * d))
 
-A block of samples cannot beat what was found already where its highest point, put where it counts
-most within the block, does not: most blocks are passed over, and the result is the same.
+A block of samples cannot beat what was found already where a straight lid over its points does not:
+most blocks are passed over, and the result is the same.
 """
 
 import math
@@ -137,7 +137,7 @@ def weigh_edges(
 @scalar
 def may_hold_better(
     narrow: NDArray,
-    top: NDArray,
+    lid: NDArray,
     steepness: NDArray,
     weight: NDArray,
     lanes: int,
@@ -146,10 +146,11 @@ def may_hold_better(
     stop: int,
     steps: float,
 ) -> bool:
-    """Whether blocks ``first`` up to ``stop``, of highest points top[row], may beat a lane's best.
+    """Whether blocks ``first`` up to ``stop``, under the lid ``row``, may beat a lane's best.
 
-    A height above the line counts most where the weight is largest, one below where it is
-    smallest; the weight of nu is smallest halfway between the ends of the path.
+    Seen from the receiver a straight lid is steepest at one of its ends. A height above the ray
+    counts most where the weight of nu is largest, one below where it is smallest: at an end, or
+    halfway along the path.
     """
     far, close = steepness[first], steepness[stop]
     one, other = weight[first], weight[stop]
@@ -160,11 +161,12 @@ def may_hold_better(
     from_step, to_step = f4(first_step), f4(last_step)
     hit = False
     for lane in range(lanes):
-        height = top[row, lane]
-        above = height - narrow[RX_BENT + lane]
-        tangent = max(above * far, above * close)
+        start = lid[2 * row, lane]
+        end = lid[2 * row + 1, lane]
+        rx = narrow[RX_BENT + lane]
+        tangent = max((start - rx) * far, (end - rx) * close)
         slope = narrow[DIRECT + lane]
-        clear = height - min(slope * from_step, slope * to_step)
+        clear = max(start - slope * from_step, end - slope * to_step)
         near = max(clear * heavy, clear * light)
         hit = hit | (tangent > narrow[BEST_TANGENT + lane]) | (near > narrow[BEST_NEAR + lane])
     return hit
@@ -175,9 +177,9 @@ def search(
     narrow: NDArray,
     surface: NDArray,
     flat_surface: NDArray,
-    block_top: NDArray,
-    group_top: NDArray,
-    region_top: NDArray,
+    block_lid: NDArray,
+    group_lid: NDArray,
+    region_lid: NDArray,
     steepness: NDArray,
     weight: NDArray,
     root: NDArray,
@@ -235,14 +237,14 @@ def search(
         if stop <= in_regions and stop % REGION == 0:
             first = stop - REGION
             if not may_hold_better(
-                narrow, region_top, steepness, weight, lanes, first // REGION, first, stop, steps
+                narrow, region_lid, steepness, weight, lanes, first // REGION, first, stop, steps
             ):
                 block -= REGION
                 continue
         if stop <= in_groups and stop % GROUP == 0:
             first = stop - GROUP
             if not may_hold_better(
-                narrow, group_top, steepness, weight, lanes, first // GROUP, first, stop, steps
+                narrow, group_lid, steepness, weight, lanes, first // GROUP, first, stop, steps
             ):
                 block -= GROUP
                 continue
@@ -253,7 +255,7 @@ def search(
         if (
             not seen
             and may_hold_better(
-                narrow, block_top, steepness, weight, lanes, block, block, block + 1, steps
+                narrow, block_lid, steepness, weight, lanes, block, block, block + 1, steps
             )
             and scan(
                 narrow,

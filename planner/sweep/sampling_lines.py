@@ -212,13 +212,13 @@ def include_sample(
 def raise_horizon(
     narrow: NDArray,
     surface: NDArray,
-    block_top: NDArray,
-    group_top: NDArray,
-    region_top: NDArray,
+    block_lid: NDArray,
+    group_lid: NDArray,
+    region_lid: NDArray,
     lanes: int,
     sample: int,
 ) -> None:
-    """Let a sample's surface count for the mast's horizon and for the blocks' highest points."""
+    """Let a sample's surface count for the mast's horizon and for the lids over the blocks."""
     per_step = f4(1.0 / (sample + 1.0))
     for lane in range(lanes):
         narrow[SURFACE_SLOPE + lane] = max(
@@ -227,20 +227,56 @@ def raise_horizon(
     stop = sample + 1
     if stop % BLOCK == 0:
         block = stop // BLOCK - 1
-        _highest(surface, stop - BLOCK, stop, block_top, block, lanes)
+        _put_lid_on_samples(surface, stop - BLOCK, block_lid, block, lanes)
         if (block + 1) % GROUP == 0:
             group = (block + 1) // GROUP - 1
-            _highest(block_top, block + 1 - GROUP, block + 1, group_top, group, lanes)
+            _put_lid_on_lids(block_lid, block + 1 - GROUP, GROUP, group_lid, group, lanes)
         if (block + 1) % REGION == 0:
             region = (block + 1) // REGION - 1
-            _highest(block_top, block + 1 - REGION, block + 1, region_top, region, lanes)
+            _put_lid_on_lids(block_lid, block + 1 - REGION, REGION, region_lid, region, lanes)
 
 
 @scalar
-def _highest(rows: NDArray, low: int, high: int, out: NDArray, row: int, lanes: int) -> None:
-    """Each lane's largest value of rows ``low`` up to ``high``."""
+def _put_lid_on_samples(
+    surface: NDArray, first: int, lids: NDArray, block: int, lanes: int
+) -> None:
+    """The lid of a block: as steep as from its first to its last sample, and above them all."""
+    start, end = 2 * block, 2 * block + 1
+    whole = f4(BLOCK)
+    share = f4(1.0 / (BLOCK - 1.0))
     for lane in range(lanes):
-        out[row, lane] = rows[low, lane]
-    for i in range(low + 1, high):
+        lids[start, lane] = surface[first, lane]
+    for lane in range(lanes):
+        rise = (surface[first + BLOCK - 1, lane] - surface[first, lane]) * share
+        lids[end, lane] = rise
+    for i in range(1, BLOCK - 1):
+        along = f4(i)
         for lane in range(lanes):
-            out[row, lane] = max(rows[i, lane], out[row, lane])
+            level = surface[first + i, lane] - along * lids[end, lane]
+            lids[start, lane] = max(level, lids[start, lane])
+    for lane in range(lanes):
+        lids[end, lane] = lids[start, lane] + whole * lids[end, lane]
+
+
+@scalar
+def _put_lid_on_lids(
+    lids: NDArray, first: int, blocks: int, out: NDArray, row: int, lanes: int
+) -> None:
+    """The lid over the lids of ``blocks`` blocks."""
+    start, end = 2 * row, 2 * row + 1
+    last = first + blocks - 1
+    whole = f4(blocks)
+    share = f4(1.0 / blocks)
+    for lane in range(lanes):
+        out[start, lane] = lids[2 * first, lane]
+    for lane in range(lanes):
+        out[end, lane] = (lids[2 * last + 1, lane] - lids[2 * first, lane]) * share
+    for n in range(blocks):
+        here, next_edge = f4(n), f4(n + 1)
+        near, far = 2 * (first + n), 2 * (first + n) + 1
+        for lane in range(lanes):
+            rise = out[end, lane]
+            level = max(lids[near, lane] - here * rise, lids[far, lane] - next_edge * rise)
+            out[start, lane] = max(level, out[start, lane])
+    for lane in range(lanes):
+        out[end, lane] = out[start, lane] + whole * out[end, lane]

@@ -21,9 +21,9 @@ def include_samples(
     narrow: NDArray,
     bent_ground: NDArray,
     surface: NDArray,
-    block_top: NDArray,
-    group_top: NDArray,
-    region_top: NDArray,
+    block_lid: NDArray,
+    group_lid: NDArray,
+    region_lid: NDArray,
     course: Course,
     included: int,
     samples: int,
@@ -39,7 +39,7 @@ def include_samples(
             narrow, bent_ground, surface, lanes, sample, at, has_obstacles, course.clearing_bulge_m
         )
     for sample in range(risen, far):
-        raise_horizon(narrow, surface, block_top, group_top, region_top, lanes, sample)
+        raise_horizon(narrow, surface, block_lid, group_lid, region_lid, lanes, sample)
 
 
 @scalar
@@ -48,9 +48,9 @@ def find_extremes(
     bent_ground: NDArray,
     surface: NDArray,
     flat_surface: NDArray,
-    block_top: NDArray,
-    group_top: NDArray,
-    region_top: NDArray,
+    block_lid: NDArray,
+    group_lid: NDArray,
+    region_lid: NDArray,
     steepness: NDArray,
     weight: NDArray,
     root: NDArray,
@@ -71,9 +71,9 @@ def find_extremes(
         narrow,
         surface,
         flat_surface,
-        block_top,
-        group_top,
-        region_top,
+        block_lid,
+        group_lid,
+        region_lid,
         steepness,
         weight,
         root,

@@ -95,9 +95,11 @@ class Fan(NamedTuple):
     place: NDArray  # int64 scratch
     bent_ground: NDArray  # [sample, lane] float32
     bent_surface: NDArray  # [sample, lane] float32, with obstacles; the same array without any
-    block_top: NDArray  # [block, lane] float32, highest bent surface of a block of samples
-    group_top: NDArray  # [group of blocks, lane] float32
-    region_top: NDArray  # [region of blocks, lane] float32
+    # Straight lids over the bent surface: rows 2 n and 2 n + 1 hold the lid's height at the first
+    # sample of block n and at the one after its last.
+    block_lid: NDArray  # [2 * block, lane] float32
+    group_lid: NDArray  # [2 * group of blocks, lane] float32
+    region_lid: NDArray  # [2 * region of blocks, lane] float32
     edge_steepness: NDArray  # [block] float32, 1 / distance from the cell to a block's first sample
     edge_weight: NDArray  # [block] float32, 1 / sqrt of the product of its distances to both ends
     root_steepness: NDArray  # [sample] float32, 1 / sqrt(i + 1)

@@ -37,7 +37,7 @@ def _walk(
     # Unpacked once: every look into a tuple of arrays counts a reference, which costs in a loop.
     narrow, wide, place = fan.narrow, fan.wide, fan.place
     bent_ground, surface = fan.bent_ground, fan.bent_surface
-    block_top, group_top, region_top = fan.block_top, fan.group_top, fan.region_top
+    block_lid, group_lid, region_lid = fan.block_lid, fan.group_lid, fan.region_lid
     steepness, weight, root = fan.edge_steepness, fan.edge_weight, fan.root_steepness
     row_steepness, row_weight, recalled = fan.row_steepness, fan.row_weight, fan.recalled
     flat_surface = surface.reshape(surface.size)
@@ -60,9 +60,9 @@ def _walk(
             narrow,
             bent_ground,
             surface,
-            block_top,
-            group_top,
-            region_top,
+            block_lid,
+            group_lid,
+            region_lid,
             course,
             included,
             samples,
@@ -88,9 +88,9 @@ def _walk(
                 bent_ground,
                 surface,
                 flat_surface,
-                block_top,
-                group_top,
-                region_top,
+                block_lid,
+                group_lid,
+                region_lid,
                 steepness,
                 weight,
                 root,
@@ -110,7 +110,7 @@ def _walk(
                 for lane in range(lanes):
                     if narrow[SPHERE + lane] > 0.0:
                         narrow[LOSS + lane] += excess_over_sphere_db(
-                            narrow, bent_ground, block_top, lane, far, t, steps, mast, link
+                            narrow, bent_ground, block_lid, lane, far, t, steps, mast, link
                         )
             write_cells(
                 narrow,
