@@ -2,24 +2,29 @@
 
 import json
 import time
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
+from functools import reduce
+from operator import add
 from pathlib import Path
 from typing import Any
 
 from planner import __version__
 from planner.antenna import GainTable, gain_table
-from planner.coverage import combine
+from planner.coverage import CellCounts, combine
 from planner.customers import CustomerAnswer, check_customers
 from planner.errors import PlanError, Problem
+from planner.handout.colours import sector_colours
+from planner.handout.map_cells import MapCells
+from planner.handout.mercator import mercator_view
 from planner.handout.offline_map import write_offline_map
 from planner.io.atomic import replaced
 from planner.io.customer_files import read_customer_list, write_customers_csv, write_customers_gpkg
 from planner.io.terrain_files import read_terrain
 from planner.network import Customer, Sector, Tower
 from planner.plan.checks import clashes
-from planner.plan.outputs import write_coverage_layers, write_path_loss
+from planner.plan.outputs import CoverageWriters, row_bands, write_path_loss
 from planner.plan.read import Plan
 from planner.plan.record import input_files, run_record
 from planner.sweep import PathField, path_field
@@ -89,14 +94,6 @@ def run_plan(
     for tower in towers:
         with stages.stage(f"path field {tower.id}") as report:
             fields[tower.id] = _tower_fields(plan, terrain, tower, report)
-    sectors = plan.sectors
-    with stages.stage("layers"):
-        items = [
-            (fields[tower.id][field_key(sector)], sector, _gain_table(plan, sector))
-            for tower in towers
-            for sector in tower.sectors
-        ]
-        coverage = combine(terrain.grid.rows, terrain.grid.cols, items, plan.terminal)
     answers: tuple[CustomerAnswer, ...] = ()
     if customers:
         with stages.stage("check customers") as report:
@@ -112,9 +109,16 @@ def run_plan(
                 obstacle_clearing_m=plan.obstacle_clearing_m,
                 progress=lambda done, total: report(done / total),
             )
-    with stages.stage("write layers"):
-        files = write_coverage_layers(folder, plan, terrain.grid, coverage, sectors)
-        if "path_loss" in plan.layers:
+    with stages.stage("layers") as report:
+        items = [
+            (fields[tower.id][field_key(sector)], sector, _gain_table(plan, sector))
+            for tower in towers
+            for sector in tower.sectors
+        ]
+        layers = _write_layers(folder, plan, terrain, items, report)
+    files = list(layers.files)
+    if "path_loss" in plan.layers:
+        with stages.stage("write path loss"):
             files += _write_path_losses(folder, plan, terrain, fields)
     if plan.customers_file is not None:
         with stages.stage("write customers"):
@@ -126,7 +130,8 @@ def run_plan(
             folder / "map.html",
             title=plan.name,
             terrain=terrain,
-            coverage=coverage,
+            cells=layers.cells,
+            colours=layers.colours,
             towers=towers,
             patterns=plan.patterns,
             answers=answers,
@@ -135,7 +140,7 @@ def run_plan(
         )
         files.append("map.html")
     record = run_record(
-        plan, terrain, coverage, answers, stages.seconds, [*files, "run.json"], notes
+        plan, terrain, layers.counts, answers, stages.seconds, [*files, "run.json"], notes
     )
     with replaced(folder / "run.json") as target:
         target.write_text(json.dumps(record, indent=2, ensure_ascii=False) + "\n", encoding="utf-8")
@@ -186,6 +191,40 @@ def _tower_fields(
             progress=report_portion,
         )
     return fields
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Layers:
+    """What is left of the layers once they are written."""
+
+    counts: CellCounts
+    cells: MapCells
+    colours: tuple[str, ...]  # of the sectors, in plan order
+    files: list[str]
+
+
+def _write_layers(
+    folder: Path,
+    plan: Plan,
+    terrain: Terrain,
+    items: Sequence[tuple[PathField, Sector, GainTable]],
+    report: Callable[[float], None],
+) -> _Layers:
+    """Combine the sectors band by band of rows; each band goes to the files and to the map."""
+    grid = terrain.grid
+    cells = MapCells(mercator_view(grid), grid)
+    counts = []
+    with CoverageWriters(folder, plan, grid, plan.sectors) as writers:
+        for start, stop in row_bands(grid.rows):
+            band = combine(grid.rows, grid.cols, items, plan.terminal, rows=(start, stop))
+            writers.write_rows(start, band)
+            cells.take_rows(start, band)
+            counts.append(band.counts)
+            report(0.9 * stop / grid.rows)  # overviews take the rest
+        # Neighbours among the cells that are shown: files and map have the same colours.
+        colours = sector_colours(cells.best_server, len(plan.sectors))
+        writers.colour_sectors(colours)
+    return _Layers(counts=reduce(add, counts), cells=cells, colours=colours, files=writers.files)
 
 
 def _gain_table(plan: Plan, sector: Sector) -> GainTable:
