@@ -181,13 +181,13 @@ def test_failure_leaves_the_older_file(tmp_path, monkeypatch):
 
 def test_silently_incomplete_file_is_noticed(tmp_path, monkeypatch):
     """A layer that reads back differently from what was written does not get its name."""
-    whole = geotiff._check_whole
+    whole = geotiff.LayerWriter._check_whole
 
-    def broken(path, array, factors, target):
+    def broken(layer, path):
         path.write_bytes(path.read_bytes()[:3000])
-        whole(path, array, factors, target)
+        whole(layer, path)
 
-    monkeypatch.setattr(geotiff, "_check_whole", broken)
+    monkeypatch.setattr(geotiff.LayerWriter, "_check_whole", broken)
     with pytest.raises(OutputError, match=r"signal\.tif: could not be written"):
         _write_signal(tmp_path / "signal.tif")
     assert list(tmp_path.iterdir()) == []

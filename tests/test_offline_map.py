@@ -15,6 +15,7 @@ from planner.antenna import formula_pattern, gain_table
 from planner.coverage import combine
 from planner.customers import check_customers
 from planner.handout.hillshade import hillshade
+from planner.handout.map_cells import MapCells
 from planner.handout.mercator import mercator_view
 from planner.handout.offline_map import write_offline_map
 from planner.network import Customer, Radio, Sector, Terminal, Tower
@@ -95,11 +96,14 @@ def made_map(path: Path, *, hostile: str = HOSTILE, online: bool = False):
         k_factor=4 / 3,
         polarization="vertical",
     )
+    cells = MapCells(mercator_view(terrain.grid), terrain.grid)
+    cells.take_rows(0, coverage)
     write_offline_map(
         path,
         title=f"Field {hostile}",
         terrain=terrain,
-        coverage=coverage,
+        cells=cells,
+        colours=("#0072b2", "#e69f00"),
         towers=[tower],
         patterns=patterns,
         answers=answers,
@@ -227,16 +231,17 @@ def test_pixels_lie_within_half_a_cell_of_the_truth():
 
 def test_hillshade_of_a_tilted_plane_is_lamberts_cosine():
     """A plane facing the sun squarely is full light, a level one the sine of its elevation."""
-    rows, cols = np.mgrid[:20, :20].astype(float)
-    level = hillshade(np.zeros((20, 20)), 10.0, exaggeration=1.0)
+    rows, cols = np.mgrid[:20, :20]
+    cells = (rows, cols)
+    level = hillshade(np.zeros((20, 20)), 10.0, *cells, exaggeration=1.0)
     np.testing.assert_allclose(level, np.sin(np.radians(40.0)))
     # Sun from the north-west at 40 degrees: a slope of 50 degrees down towards the north-west.
     rise = np.tan(np.radians(50.0)) / np.sqrt(2.0) * 10.0
-    facing = hillshade((rows + cols) * rise, 10.0, exaggeration=1.0)
+    facing = hillshade((rows + cols) * rise, 10.0, *cells, exaggeration=1.0)
     np.testing.assert_allclose(facing, 1.0, atol=1e-12)
-    away = hillshade(-(rows + cols) * rise, 10.0, exaggeration=1.0)
+    away = hillshade(-(rows + cols) * rise, 10.0, *cells, exaggeration=1.0)
     np.testing.assert_allclose(away, 0.0, atol=1e-12)
-    assert np.isnan(hillshade(np.full((4, 4), np.nan), 10.0)).all()
+    assert np.isnan(hillshade(np.full((4, 4), np.nan), 10.0, *np.mgrid[:4, :4])).all()
 
 
 @pytest.mark.browser

@@ -10,7 +10,7 @@ from plans import PLAN, write_plan
 from pydantic_core import PydanticUndefined
 
 from planner.plan import read_plan
-from planner.plan.schema import PlanTable, every_key, table_and_field
+from planner.plan.schema import ALL_LAYERS, PlanTable, every_key, table_and_field
 from planner.units import STANDARD_K_FACTOR
 
 PAGE = (Path(__file__).parents[1] / "docs" / "plan-file.md").read_text(encoding="utf-8")
@@ -64,7 +64,7 @@ def shown_default(default: Any) -> str:
     if isinstance(default, datetime.date):
         return default.isoformat()
     if isinstance(default, list):
-        return "all four" if len(default) == 4 else str(default)
+        return "the first four" if default == list(ALL_LAYERS[:4]) else str(default)
     return f"{default:g}"
 
 

@@ -33,6 +33,9 @@ SIGNAL_STEP_DB = 5.0
 SECTOR_HUES = ("#0072b2", "#e69f00", "#cc79a7", "#009e73", "#d55e00", "#56b4e9")
 SECTOR_OPACITY = 0.55
 
+# Classes of line of sight: the bluish green of the sector hues, from a trace to full depth.
+SIGHT_COLOURS = {1: "#e3f1ec", 2: "#a5d6c4", 3: "#4fae8f", 4: "#00684c"}
+
 SMALL_PT, TEXT_PT, TITLE_PT = 7.5, 9.0, 12.0
 
 
@@ -42,13 +45,15 @@ def sector_colours(best_server: NDArray[np.int16], count: int) -> tuple[str, ...
     ``best_server`` numbers each cell's sector from 1. Sector by sector, the hue is taken that has
     the shortest common border with sectors that have it already, and of these the least used.
     """
-    borders = np.zeros((count + 1, count + 1))
+    counted = np.zeros((count + 1) ** 2)
     for one, other in (
         (best_server[:, 1:], best_server[:, :-1]),
         (best_server[1:, :], best_server[:-1, :]),
     ):
         meet = (one != other) & (one > 0) & (other > 0)
-        np.add.at(borders, (one[meet], other[meet]), 1.0)
+        pairs = one[meet].astype(np.int64) * (count + 1) + other[meet]
+        counted += np.bincount(pairs, minlength=counted.size)
+    borders = counted.reshape(count + 1, count + 1)
     borders += borders.T
     chosen: list[int] = []
     for number in range(1, count + 1):

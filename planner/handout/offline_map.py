@@ -17,12 +17,13 @@ from typing import Any
 import folium
 import numpy as np
 from branca.element import Element
+from pyproj import Transformer
 
 from planner.antenna import Pattern, half_power_edges_deg
-from planner.coverage import Coverage
 from planner.customers import CustomerAnswer
 from planner.geodesy import point_at
-from planner.handout.colours import sector_colours, signal_classes
+from planner.handout.colours import signal_classes
+from planner.handout.map_cells import MapCells
 from planner.handout.map_pictures import (
     MARGIN_FLOOR_DB,
     SIGNAL_FLOOR_DBM,
@@ -33,9 +34,9 @@ from planner.handout.map_pictures import (
     server_picture,
     signal_picture,
 )
-from planner.handout.mercator import LONGEST_SIDE_PX, MercatorView, mercator_view
+from planner.handout.mercator import LONGEST_SIDE_PX, MercatorView
 from planner.io.atomic import replaced
-from planner.network import Sector, Tower
+from planner.network import Tower
 from planner.terrain import Terrain
 
 _ARC_STEP_DEG = 4.0
@@ -65,7 +66,8 @@ def write_offline_map(
     *,
     title: str,
     terrain: Terrain,
-    coverage: Coverage,
+    cells: MapCells,
+    colours: Sequence[str],
     towers: Sequence[Tower],
     patterns: Mapping[str, Pattern],
     answers: Sequence[CustomerAnswer],
@@ -74,11 +76,12 @@ def write_offline_map(
 ) -> None:
     """Write the page to ``path``; the same inputs give the same bytes.
 
-    ``towers`` carry the sectors that are on, numbered from 1 in their order, as in ``coverage``.
+    ``towers`` carry the sectors that are on, numbered from 1 in their order, as in ``cells``;
+    ``colours`` are theirs. The ramp of the signal follows from the cells that are shown.
     With ``online_base_map`` the page may fetch OpenStreetMap tiles; without it nothing at all.
     """
     page = _page(
-        title, terrain, coverage, towers, patterns, answers, version, online=online_base_map
+        title, terrain, cells, colours, towers, patterns, answers, version, online=online_base_map
     )
     with replaced(path) as target:
         target.write_text(page, encoding="utf-8")
@@ -87,7 +90,8 @@ def write_offline_map(
 def _page(
     title: str,
     terrain: Terrain,
-    coverage: Coverage,
+    cells: MapCells,
+    colours: Sequence[str],
     towers: Sequence[Tower],
     patterns: Mapping[str, Pattern],
     answers: Sequence[CustomerAnswer],
@@ -95,14 +99,13 @@ def _page(
     *,
     online: bool,
 ) -> str:
-    view = mercator_view(terrain.grid)
+    view = cells.view
     sectors = [sector for tower in towers for sector in tower.sectors]
     threshold_dbm = min((s.radio.service_threshold_dbm for s in sectors), default=-math.inf)
-    served = coverage.received_signal_dbm[coverage.best_server > 0]
+    served = cells.received_signal_dbm[cells.best_server > 0]
     # The few cells under the mast would stretch the ramp over signals that nobody maps.
     strongest_dbm = float(np.percentile(served, 99.0)) if served.size else threshold_dbm
     classes = signal_classes(threshold_dbm, strongest_dbm) if sectors else ()
-    colours = sector_colours(coverage.best_server, len(sectors))
     data = {
         "title": title,
         "version": version,
@@ -124,10 +127,10 @@ def _page(
             for lower, upper, colour in classes
         ],
         "relief": relief_picture(terrain, view),
-        "signal": signal_picture(coverage, view, classes),
-        "server": server_picture(coverage, view, colours),
-        "values": read_out(coverage, view),
-        "labels": _labels(terrain, coverage, sectors),
+        "signal": signal_picture(cells, classes),
+        "server": server_picture(cells, colours),
+        "values": read_out(cells),
+        "labels": _labels(cells, len(sectors)),
         "sectors": [
             {"id": sector.id, "colour": colour}
             for sector, colour in zip(sectors, colours, strict=True)
@@ -197,13 +200,12 @@ def _shown_cell_m(view: MercatorView, terrain: Terrain) -> float:
     return max(round(float(view.transform.a) * math.cos(middle), 1), terrain.grid.cell_m)
 
 
-def _labels(
-    terrain: Terrain, coverage: Coverage, sectors: Sequence[Sector]
-) -> list[dict[str, Any]]:
+def _labels(cells: MapCells, sectors: int) -> list[dict[str, Any]]:
+    to_degrees = Transformer.from_crs(3857, 4326, always_xy=True)
     labels = []
-    for number, row, col in label_places(coverage, len(sectors)):
-        latitude, longitude = terrain.grid.to_geographic(*terrain.grid.easting_northing(row, col))
-        labels.append({"sector": number, "at": _place(float(latitude), float(longitude))})
+    for number, row, col in label_places(cells, sectors):
+        longitude, latitude = to_degrees.transform(*(cells.view.transform @ (col + 0.5, row + 0.5)))
+        labels.append({"sector": number, "at": _place(latitude, longitude)})
     return labels
 
 

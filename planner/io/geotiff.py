@@ -18,16 +18,18 @@ So names and colours go to two places:
   also holds the -1. ``gdalinfo`` shows all three.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
+from contextlib import contextmanager, suppress
 from pathlib import Path
 from xml.etree import ElementTree
 
 import numpy as np
 import rasterio
-from numpy.typing import NDArray
+from numpy.typing import DTypeLike, NDArray
 from rasterio.crs import CRS
 from rasterio.enums import Resampling
 from rasterio.errors import RasterioError
+from rasterio.io import DatasetWriter
 
 from planner.errors import OutputError
 from planner.io.atomic import replaced
@@ -36,7 +38,188 @@ from planner.terrain import Grid
 Colour = tuple[int, int, int, int]  # red, green, blue, opacity; 0 to 255
 
 TILE_CELLS = 256
+CACHE_BYTES = 64 * 2**20  # tiles that GDAL keeps in memory, of all open layers together
 NO_DATA_NAME = "no data"
+
+
+@contextmanager
+def open_layer(
+    path: Path,
+    grid: Grid,
+    *,
+    dtype: DTypeLike,
+    description: str | Sequence[str],
+    unit: str,
+    nodata: float,
+    tags: Mapping[str, str],
+) -> Iterator["LayerWriter"]:
+    """A layer on ``grid`` to be written band of rows by band of rows; takes its name at the end.
+
+    Parameters
+    ----------
+    path : Path
+        Where the layer stands once it is whole. Any number of layers may be open at once.
+    dtype : numpy type
+        Of the rows to come.
+    description : str or sequence of str
+        What the layer shows; several make a layer of as many bands.
+    unit : str
+        Of every band.
+    nodata : float
+        NaN for floats, a code for integers.
+    tags : mapping
+        What stands in the file about how it was made.
+
+    Raises
+    ------
+    ValueError
+        Rows are missing at the end.
+    OutputError
+        The file could not be written, or not whole.
+
+    Notes
+    -----
+    An exception in the body, or one of these, leaves what stood at ``path`` before. The bytes do
+    not depend on the height of the bands, nor on what other layers are open.
+    """
+    path = Path(path)
+    descriptions = (description,) if isinstance(description, str) else tuple(description)
+    kind = np.dtype(dtype)
+    is_float = np.issubdtype(kind, np.floating)
+    profile = {
+        "driver": "GTiff",
+        "width": grid.cols,
+        "height": grid.rows,
+        "count": len(descriptions),
+        "dtype": kind.name,
+        "nodata": nodata,
+        "crs": CRS.from_wkt(grid.crs.to_wkt()),
+        "transform": grid.transform,
+        "tiled": True,
+        "blockxsize": TILE_CELLS,
+        "blockysize": TILE_CELLS,
+        "interleave": "pixel",
+        "compress": "deflate",
+        "zlevel": 1 if is_float else 6,
+        "predictor": 3 if is_float else 1,
+        "num_threads": 1,
+        "bigtiff": "if_safer",
+    }
+    with replaced(path) as temporary:
+        with _gdal_errors(path), _settings():
+            dataset = rasterio.open(temporary, "w", **profile)
+        layer = LayerWriter(path, dataset, nodata)
+        try:
+            yield layer
+            layer._finish(descriptions, unit, tags)
+        except BaseException:
+            # What is still to be flushed goes to a file that is about to be removed.
+            with suppress(RasterioError), _settings():
+                dataset.close()
+            raise
+        with _gdal_errors(path):
+            layer._check_whole(temporary)
+        # Side files of an older layer would give this one wrong names, statistics or overviews.
+        for ending in (".ovr", ".msk"):
+            path.with_name(path.name + ending).unlink(missing_ok=True)
+        layer._write_side_file()
+
+
+class LayerWriter:
+    """A layer that is being written, made by `open_layer`."""
+
+    def __init__(self, path: Path, dataset: DatasetWriter, nodata: float) -> None:
+        self._path = path
+        self._dataset = dataset
+        self._nodata = nodata
+        self._rows_done = 0
+        self._last_row = np.empty((0, 0), dtype=dataset.dtypes[0])  # [bands, cols]
+        self._names: tuple[str, ...] = ()
+        self._colours: dict[int, Colour] = {}
+        self._factors = _overview_factors(dataset.height, dataset.width)
+
+    def write_rows(self, row_start: int, array: NDArray[np.generic]) -> None:
+        """Write rows from ``row_start`` on: [rows, cols], or [bands, rows, cols] of several bands.
+
+        Bands of rows come in order, without a gap, from row 0. All but the last hold a multiple of
+        `TILE_CELLS` rows. ValueError where they do not, or where the type is another.
+        """
+        layer, name = self._dataset, self._path.name
+        rows = array.reshape((-1, *array.shape[-2:]))
+        stop = row_start + rows.shape[1]
+        if rows.shape[0] != layer.count or rows.shape[2] != layer.width or stop > layer.height:
+            raise ValueError(
+                f"{name}: array {array.shape} on a grid {layer.height, layer.width} of "
+                f"{layer.count} band(s), from row {row_start}"
+            )
+        if array.dtype.name != layer.dtypes[0]:
+            raise ValueError(f"{name}: {array.dtype} in a layer of {layer.dtypes[0]}")
+        if row_start != self._rows_done or (stop % TILE_CELLS and stop != layer.height):
+            raise ValueError(
+                f"{name}: rows {row_start} to {stop} after {self._rows_done}; bands of rows come "
+                f"in order, each but the last a multiple of {TILE_CELLS}"
+            )
+        with _gdal_errors(self._path), _settings():
+            # One row of tiles at a time, however high the band: the same calls, the same bytes.
+            for first in range(row_start, stop, TILE_CELLS):
+                last = min(first + TILE_CELLS, stop)
+                layer.write(
+                    rows[:, first - row_start : last - row_start],
+                    window=((first, last), (0, layer.width)),
+                )
+        self._rows_done = stop
+        self._last_row = rows[:, -1].copy()
+
+    def name_classes(
+        self, categories: Sequence[str], colours: Mapping[int, Colour] | None = None
+    ) -> None:
+        """Names of the values 0, 1, 2, ... of an integer layer, and colours by value.
+
+        At any time before the layer is closed; a value without a colour is clear.
+        """
+        if np.issubdtype(np.dtype(self._dataset.dtypes[0]), np.floating):
+            kind = self._dataset.dtypes[0]
+            raise ValueError(f"{self._path.name}: categories need whole numbers, not {kind}")
+        self._names = tuple(_plain(name) for name in categories)
+        self._colours = dict(colours or {})
+
+    def _finish(self, descriptions: Sequence[str], unit: str, tags: Mapping[str, str]) -> None:
+        """Tags, overviews, and everything to the disk."""
+        layer = self._dataset
+        if self._rows_done != layer.height:
+            raise ValueError(
+                f"{self._path.name}: {self._rows_done} of {layer.height} rows were written"
+            )
+        every_tag = {key: str(value) for key, value in tags.items()}
+        for value, name in enumerate(self._names):
+            every_tag[f"CATEGORY_{value}"] = name
+        for value, colour in self._colours.items():
+            every_tag[f"CATEGORY_{value}_COLOUR"] = "#" + bytes(colour).hex()
+        with _gdal_errors(self._path), _settings():
+            layer.update_tags(**every_tag)
+            for number, text in enumerate(descriptions, start=1):
+                layer.set_band_description(number, text)
+                layer.set_band_unit(number, unit)
+            if self._factors:
+                layer.build_overviews(self._factors, Resampling.nearest)
+            layer.close()
+
+    def _check_whole(self, path: Path) -> None:
+        """GDAL may keep silent about a full disk until the file is read: read its last row."""
+        with rasterio.open(path) as layer:
+            last = layer.read(window=((layer.height - 1, layer.height), (0, layer.width)))
+            is_float = np.issubdtype(last.dtype, np.floating)
+            whole = np.array_equal(last[:, 0], self._last_row, equal_nan=is_float)
+            if not whole or layer.overviews(1) != self._factors:
+                raise OutputError(f"{self._path}: could not be written whole; is the disk full?")
+
+    def _write_side_file(self) -> None:
+        side_file = self._path.with_name(self._path.name + ".aux.xml")
+        if self._names or self._colours:
+            with replaced(side_file) as temporary:
+                temporary.write_bytes(_side_file(self._names, self._colours, int(self._nodata)))
+        else:
+            side_file.unlink(missing_ok=True)
 
 
 def write_layer(
@@ -51,66 +234,37 @@ def write_layer(
     categories: Sequence[str] | None = None,
     colours: Mapping[int, Colour] | None = None,
 ) -> None:
-    """Write ``array`` [rows, cols] on ``grid`` to ``path``; raises OutputError where that fails.
+    """Write ``array`` [rows, cols] on ``grid`` at once; as `open_layer` and `LayerWriter` do."""
+    with open_layer(
+        path,
+        grid,
+        dtype=array.dtype,
+        description=description,
+        unit=unit,
+        nodata=nodata,
+        tags=tags,
+    ) as layer:
+        if categories is not None or colours:
+            layer.name_classes(categories or (), colours)
+        layer.write_rows(0, array)
 
-    ``nodata`` is NaN for floats and a code for integers. ``categories`` are the names of the values
-    0, 1, 2, ... of an integer layer and ``colours`` their colours by value (others are clear).
-    """
-    path = Path(path)
-    if array.shape != (grid.rows, grid.cols):
-        raise ValueError(f"{path.name}: array {array.shape} on a grid {grid.rows, grid.cols}")
-    is_float = np.issubdtype(array.dtype, np.floating)
-    if is_float and categories is not None:
-        raise ValueError(f"{path.name}: categories need whole numbers, not {array.dtype}")
-    names = tuple(_plain(name) for name in categories or ())
-    every_tag = {key: str(value) for key, value in tags.items()}
-    for value, name in enumerate(names):
-        every_tag[f"CATEGORY_{value}"] = name
-    for value, colour in (colours or {}).items():
-        every_tag[f"CATEGORY_{value}_COLOUR"] = "#" + bytes(colour).hex()
-    profile = {
-        "driver": "GTiff",
-        "width": grid.cols,
-        "height": grid.rows,
-        "count": 1,
-        "dtype": array.dtype.name,
-        "nodata": nodata,
-        "crs": CRS.from_wkt(grid.crs.to_wkt()),
-        "transform": grid.transform,
-        "tiled": True,
-        "blockxsize": TILE_CELLS,
-        "blockysize": TILE_CELLS,
-        "compress": "deflate",
-        "zlevel": 1 if is_float else 6,
-        "predictor": 3 if is_float else 1,
-        "num_threads": 1,
-        "bigtiff": "if_safer",
-    }
-    side_file = path.with_name(path.name + ".aux.xml")
-    with replaced(path) as temporary:
-        try:
-            with rasterio.Env(GDAL_PAM_ENABLED="NO", GDAL_TIFF_OVR_BLOCKSIZE=str(TILE_CELLS)):
-                # Tags first: set after the data they would be written twice.
-                with rasterio.open(temporary, "w", **profile) as layer:
-                    layer.update_tags(**every_tag)
-                    layer.set_band_description(1, description)
-                    layer.set_band_unit(1, unit)
-                    layer.write(array, 1)
-                    factors = _overview_factors(grid.rows, grid.cols)
-                    if factors:
-                        layer.build_overviews(factors, Resampling.nearest)
-                _check_whole(temporary, array, factors, path)
-        except RasterioError as error:
-            reason = error.__cause__ or error
-            raise OutputError(f"{path}: could not be written: {reason}") from error
-        # Side files of an older layer would give this one wrong names, statistics or overviews.
-        for ending in (".ovr", ".msk"):
-            path.with_name(path.name + ending).unlink(missing_ok=True)
-        if names or colours:
-            with replaced(side_file) as temporary_side_file:
-                temporary_side_file.write_bytes(_side_file(names, colours or {}, int(nodata)))
-        else:
-            side_file.unlink(missing_ok=True)
+
+def _settings() -> rasterio.Env:
+    """GDAL's settings, for the time of one call: layers that are open at once may not nest them."""
+    return rasterio.Env(
+        GDAL_PAM_ENABLED="NO",
+        GDAL_TIFF_OVR_BLOCKSIZE=str(TILE_CELLS),
+        GDAL_CACHEMAX=CACHE_BYTES,
+    )
+
+
+@contextmanager
+def _gdal_errors(path: Path) -> Iterator[None]:
+    try:
+        yield
+    except RasterioError as error:
+        reason = error.__cause__ or error
+        raise OutputError(f"{path}: could not be written: {reason}") from error
 
 
 def _overview_factors(rows: int, cols: int) -> list[int]:
@@ -121,17 +275,6 @@ def _overview_factors(rows: int, cols: int) -> list[int]:
         factor *= 2
         factors.append(factor)
     return factors
-
-
-def _check_whole(path: Path, array: NDArray[np.generic], factors: list[int], target: Path) -> None:
-    """GDAL may keep silent about a full disk until the file is read: read its last row of tiles."""
-    with rasterio.open(path) as layer:
-        last_row = layer.read(1, window=((array.shape[0] - 1, array.shape[0]), (0, array.shape[1])))
-        whole = np.array_equal(
-            last_row[0], array[-1], equal_nan=np.issubdtype(array.dtype, np.floating)
-        )
-        if not whole or layer.overviews(1) != factors:
-            raise OutputError(f"{target}: could not be written whole; is the disk full?")
 
 
 def _plain(text: str) -> str:
@@ -170,7 +313,9 @@ def _side_file(names: Sequence[str], colours: Mapping[int, Colour], nodata: int)
         ElementTree.SubElement(field, "Name").text = title
         ElementTree.SubElement(field, "Type").text = str(kind)
         ElementTree.SubElement(field, "Usage").text = str(usage)
-    rows: list[tuple[int, str, Colour]] = [(nodata, NO_DATA_NAME, clear)]
+    rows: list[tuple[int, str, Colour]] = []
+    if nodata not in values:
+        rows.append((nodata, NO_DATA_NAME, clear))
     for value in values:
         name = names[value] if value < len(names) else str(value)
         rows.append((value, name, colours.get(value, clear)))

@@ -47,6 +47,7 @@ class Plan:
     customers_file: Path | None
     output_folder: Path
     layers: tuple[str, ...]
+    needed_height_limit_m: float  # greatest height that the layer of needed heights tries
     online_base_map: bool
 
     @property
@@ -146,6 +147,7 @@ def _plan(file: TomlFile, tables: PlanTable, patterns: Mapping[tuple[str, str], 
         customers_file=None if tables.customers is None else folder / tables.customers.file,
         output_folder=folder / tables.output.folder,
         layers=tuple(tables.output.layers),
+        needed_height_limit_m=tables.output.needed_height_limit_m,
         online_base_map=tables.output.online_base_map,
     )
 

@@ -5,7 +5,7 @@ from pathlib import Path
 from typing import Any
 
 from planner import __version__
-from planner.coverage import Coverage
+from planner.coverage import CellCounts
 from planner.customers import CustomerAnswer
 from planner.plan.outputs import MODEL
 from planner.plan.read import Plan, eirp_excesses
@@ -28,7 +28,7 @@ def input_files(plan: Plan) -> list[Path]:
 def run_record(
     plan: Plan,
     terrain: Terrain,
-    coverage: Coverage,
+    counts: CellCounts,
     answers: tuple[CustomerAnswer, ...],
     stages: list[dict[str, Any]],
     files: list[str],
@@ -40,7 +40,6 @@ def run_record(
     Only ``stages`` holds the clock, and only ``path_fields`` tells what an earlier run had left.
     """
     excesses = eirp_excesses(plan)
-    counts = coverage.counts
     verdicts = [answer.verdict for answer in answers]
     warnings = [*terrain.warnings, *notes]
     warnings += [note for pattern in plan.patterns.values() for note in pattern.notes]

@@ -9,18 +9,22 @@ from pathlib import Path
 from typing import Any
 
 from planner import __version__
-from planner.antenna import GainTable, gain_table
-from planner.coverage import combine
 from planner.customers import CustomerAnswer, check_customers
 from planner.errors import PlanError, Problem
 from planner.handout.offline_map import write_offline_map
 from planner.io.atomic import replaced
 from planner.io.customer_files import read_customer_list, write_customers_csv, write_customers_gpkg
-from planner.io.path_store import PathStore, release_pages
+from planner.io.path_store import PathStore
 from planner.io.terrain_files import read_terrain
-from planner.network import Customer, Sector, Tower
+from planner.network import Customer, Tower
 from planner.plan.checks import PATH_FIELDS_FOLDER, clashes
-from planner.plan.outputs import write_coverage_layers, write_path_loss
+from planner.plan.layers import (
+    TowerFields,
+    sector_gain_table,
+    write_layers,
+    write_needed_heights,
+    write_path_losses,
+)
 from planner.plan.path_tasks import (
     PathFieldTask,
     computed_field,
@@ -30,11 +34,10 @@ from planner.plan.path_tasks import (
 )
 from planner.plan.read import Plan
 from planner.plan.record import input_files, run_record
-from planner.sweep import PathField
+from planner.sweep import PathField, load_kernels
 from planner.terrain import Terrain
 
 Progress = Callable[[str, float], None]  # what is being done, share done from 0 to 1
-_Fields = dict[tuple[float, float], PathField]  # of one tower, by antenna height and frequency
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -96,18 +99,10 @@ def run_plan(
             names=[tower.id for tower in towers],
             progress=report,
         )
+    with stages.stage("compiled code, once per machine up to half a minute"):
+        load_kernels()
     store = PathStore(folder / PATH_FIELDS_FOLDER)
     fields, path_fields = _path_fields(plan, terrain, towers, store, stages)
-    sectors = plan.sectors
-    with stages.stage("layers"):
-        items = [
-            (fields[tower.id][field_key(sector)], sector, _gain_table(plan, sector))
-            for tower in towers
-            for sector in tower.sectors
-        ]
-        coverage = combine(terrain.grid.rows, terrain.grid.cols, items, plan.terminal)
-        for field, _, _ in items:
-            release_pages(field)
     answers: tuple[CustomerAnswer, ...] = ()
     if customers:
         with stages.stage("check customers") as report:
@@ -123,10 +118,23 @@ def run_plan(
                 obstacle_clearing_m=plan.obstacle_clearing_m,
                 progress=lambda done, total: report(done / total),
             )
-    with stages.stage("write layers"):
-        files = write_coverage_layers(folder, plan, terrain.grid, coverage, sectors)
-        if "path_loss" in plan.layers:
-            files += _write_path_losses(folder, plan, terrain, fields)
+    aimed = [
+        [(sector, sector_gain_table(plan, sector)) for sector in tower.sectors] for tower in towers
+    ]
+    with stages.stage("layers") as report:
+        items = [
+            (fields[tower.id][field_key(sector)], sector, table)
+            for tower, own in zip(towers, aimed, strict=True)
+            for sector, table in own
+        ]
+        layers = write_layers(folder, plan, terrain, items, report)
+    files = list(layers.files)
+    if "path_loss" in plan.layers:
+        with stages.stage("write path loss"):
+            files += write_path_losses(folder, plan, terrain, fields)
+    if "needed_height" in plan.layers:
+        with stages.stage("needed heights") as report:
+            files.append(write_needed_heights(folder, plan, terrain, towers, aimed, report))
     if plan.customers_file is not None:
         with stages.stage("write customers"):
             write_customers_csv(folder / "customers.csv", answers)
@@ -137,7 +145,8 @@ def run_plan(
             folder / "map.html",
             title=plan.name,
             terrain=terrain,
-            coverage=coverage,
+            cells=layers.cells,
+            colours=layers.colours,
             towers=towers,
             patterns=plan.patterns,
             answers=answers,
@@ -149,7 +158,7 @@ def run_plan(
     record = run_record(
         plan,
         terrain,
-        coverage,
+        layers.counts,
         answers,
         stages.seconds,
         [*files, "run.json"],
@@ -177,7 +186,7 @@ def _refuse_overwriting(plan: Plan, folder: Path) -> None:
 
 def _path_fields(
     plan: Plan, terrain: Terrain, towers: tuple[Tower, ...], store: PathStore, stages: _Stages
-) -> tuple[dict[str, _Fields], list[dict[str, Any]]]:
+) -> tuple[dict[str, TowerFields], list[dict[str, Any]]]:
     """Every tower's path fields, from the store as far as it has them, and what to record."""
     tasks = {tower.id: tower_tasks(plan, tower) for tower in towers}
     keys: dict[PathFieldTask, str] = {}
@@ -216,7 +225,7 @@ def _tower_fields(
     terrain: Terrain,
     store: PathStore,
     report: Callable[[float], None],
-) -> _Fields:
+) -> TowerFields:
     fields = {}
     for number, (height_and_frequency, task) in enumerate(tasks.items()):
 
@@ -228,30 +237,3 @@ def _tower_fields(
             field = computed_field(task, keys[task], terrain, store, report_portion)
         fields[height_and_frequency] = field
     return fields
-
-
-def _gain_table(plan: Plan, sector: Sector) -> GainTable:
-    return gain_table(
-        plan.patterns[sector.id],
-        azimuth_deg=sector.azimuth_deg,
-        mechanical_downtilt_deg=sector.mechanical_downtilt_deg,
-        electrical_downtilt_deg=sector.electrical_downtilt_deg,
-    )
-
-
-def _write_path_losses(
-    folder: Path,
-    plan: Plan,
-    terrain: Terrain,
-    fields: dict[str, _Fields],
-) -> list[str]:
-    """One file per tower; a further height or frequency on it gets a file that says which."""
-    names = []
-    for tower_id, by_key in fields.items():
-        for number, ((height_m, frequency_mhz), field) in enumerate(by_key.items()):
-            name = f"path_loss_{tower_id}"
-            if number > 0:
-                name += f"_{height_m:g}m_{frequency_mhz:g}mhz"
-            names.append(write_path_loss(folder, f"{name}.tif", plan, terrain, field))
-            release_pages(field)
-    return names

@@ -16,13 +16,17 @@ from pydantic.fields import FieldInfo
 from planner.antenna.pattern import HIGHEST_GAIN_DBI, HIGHEST_TILT_DEG, LOWEST_GAIN_DBI
 from planner.units import STANDARD_K_FACTOR
 
-LayerName = Literal["received_signal", "best_server", "server_margin", "path_loss"]
-ALL_LAYERS: tuple[LayerName, ...] = (
+LayerName = Literal[
     "received_signal",
     "best_server",
     "server_margin",
     "path_loss",
-)
+    "line_of_sight",
+    "fresnel_clearance",
+    "needed_height",
+]
+ALL_LAYERS: tuple[LayerName, ...] = get_args(LayerName)
+USUAL_LAYERS: tuple[LayerName, ...] = ALL_LAYERS[:4]
 
 ID_PATTERN = r"^[A-Za-z0-9][A-Za-z0-9._-]{0,63}$"
 ID_RULE = "1 to 64 of the letters A-Z a-z, digits, - _ . and a letter or digit first"
@@ -204,9 +208,10 @@ class OutputTable(Table):
 
     folder: str = _file(default="out", what="a folder")
     layers: list[LayerName] = Field(
-        default=list(ALL_LAYERS),
+        default=list(USUAL_LAYERS),
         description="a list of any of " + ", ".join(f'"{name}"' for name in ALL_LAYERS),
     )
+    needed_height_limit_m: float = _number(0.5, 100, "m", default=20.0)
     online_base_map: bool = _words("true or false", default=False)
 
 

@@ -140,6 +140,29 @@ def path_field(
     )
 
 
+def load_kernels() -> None:
+    """Load the compiled sweep, or compile it where this processor has not done so yet.
+
+    A walk over nothing: compiling takes some twenty seconds, once for a processor and version.
+    """
+    nothing = np.full((2, 2), np.nan, dtype=np.float32)
+    no_obstacle = np.zeros((0, 0), dtype=np.float32)
+    for array in (nothing, no_obstacle):
+        array.flags.writeable = False
+    empty = np.empty((0, 0), dtype=np.float32)
+    walk_fan(
+        0,
+        1,
+        0,
+        0,
+        nothing,
+        no_obstacle,
+        Mast(0.0, 0.0, 0, 0, 1.0, 1.0, 0.0, 0.0, 0.0),
+        Link(1.0, 1.0, 1e6, 1e3, 0.3, True, 1.0, 0.0),
+        Layers(empty, empty.copy(), empty.copy(), np.empty((0, 0), dtype=np.uint8)),
+    )
+
+
 def _compute_own_cell(mast: Mast, link: Link, ground: NDArray[np.float32], layers: Layers) -> None:
     """A mast on the very centre of a cell: no radial owns that cell, straight down is its path."""
     row, col = int(mast.row), int(mast.col)
