@@ -3,4 +3,4 @@
 The rooms of the package, and which may import which, are listed in DEVELOPERS.md.
 """
 
-__version__ = "0.1.0"
+__version__ = "0.2.0"

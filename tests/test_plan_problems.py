@@ -187,7 +187,7 @@ CASES = [
         ("[customers]", '[output]\nlayers = ["path_los", "path_loss", "path_loss"]\n[customers]'),
         says=['plan.toml: output.layers.0 (line 49): found "path_los"; allowed: a list of any of '
               '"received_signal", "best_server", "server_margin", "path_loss", "line_of_sight", '
-              '"fresnel_clearance". '
+              '"fresnel_clearance", "needed_height". '
               'Did you mean "path_loss"?',
               'plan.toml: output.layers.2 (line 49): found "path_loss" again; '
               "allowed: each layer once"],

@@ -65,6 +65,7 @@ def wedge_of(number: int, ground: NDArray, mast: Mast, window_rows: int, window_
         first_line,
         abs(first_line - main),
         (rows if along_rows else cols) - 1,
+        (cols if along_rows else rows) - 1,
         1 if along_rows else cols,
         cols if along_rows else 1,
         mast.col_start if along_rows else mast.row_start,

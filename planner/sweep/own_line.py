@@ -122,6 +122,7 @@ def own_lines(
             narrow[OWN_WOOD + lane] = flat_obstacle[np.uint64(start + place[CELL + lane] * stride)]
     _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 1)
     _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 2)
+    _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 3)
 
 
 @pasted
@@ -201,6 +202,7 @@ def own_profile(
         narrow[CELL_HOLES + lane] = narrow[HOLES + lane]
     _own_sample(narrow, lanes, t, steps, has_obstacles, link, 1)
     _own_sample(narrow, lanes, t, steps, has_obstacles, link, 2)
+    _own_sample(narrow, lanes, t, steps, has_obstacles, link, 3)
 
 
 @pasted
@@ -279,6 +281,7 @@ def start_search(narrow: NDArray, lanes: int, steps: float) -> None:
         narrow[BEST_NEAR + lane] = least if wanted else f4(np.inf)
     _own_candidate(narrow, lanes, steps, 0)
     _own_candidate(narrow, lanes, steps, 1)
+    _own_candidate(narrow, lanes, steps, 2)
 
 
 @pasted

@@ -1,4 +1,4 @@
-"""Terrain under a fan: where its radials cross the lines of cells, and samples a step apart."""
+"""Terrain under a fan: samples of its radials, a cell's width apart."""
 
 import math
 
@@ -21,7 +21,6 @@ from planner.sweep.state import (
     INDEX,
     LAST_CROSSING,
     LAST_GROUND,
-    LAST_WOOD,
     LOWER,
     MOMENT,
     NEXT_INDEX,
@@ -30,7 +29,6 @@ from planner.sweep.state import (
     SUM,
     SURFACE_SLOPE,
     UPPER,
-    WOOD,
     Link,
     Mast,
     Wedge,
@@ -74,8 +72,6 @@ def start_fan(
         )
         narrow[BULGE + lane] = stretch_m * stretch_m / (2.0 * link.earth_radius_m)
         narrow[BULGE_DRIFT + lane] = 2.0 * drift
-        narrow[LAST_CROSSING + lane] = mast.ground_m - link.tx_height_m
-        narrow[LAST_WOOD + lane] = 0.0
         narrow[LAST_GROUND + lane] = mast.ground_m - link.tx_height_m
         narrow[SURFACE_SLOPE + lane] = -np.inf
         narrow[GROUND_SLOPE + lane] = -np.inf
@@ -115,61 +111,62 @@ def crossing(
 
 
 @scalar
-def cross_line(
+def take_sample(
     narrow: NDArray,
     place: NDArray,
-    lanes: int,
+    ground: NDArray,
+    surface: NDArray,
     flat_ground: NDArray,
     flat_obstacle: NDArray,
+    lanes: int,
     wedge: Wedge,
     line: int,
+    back: float,
+    sample: int,
     link: Link,
 ) -> None:
-    """Ground and obstacles where the radials cross a line."""
+    """Ground (and obstacles) of a sample ``back`` of a line's distance before a line, bilinear.
+
+    ``back`` is at least 0 and less than 1. A line without weight may be a hole.
+    """
     last = wedge.lateral_last
+    turned_back = int(back * FIXED)
     for lane in range(lanes):
+        step = (place[EDGE_STEP + lane] + place[EDGE_STEP + lane + 1]) >> 1
         at = (place[EDGE + lane] + place[EDGE + lane + 1]) >> 1
+        at -= ((step >> 8) * (turned_back >> 8)) >> 16
         i = at >> 32
         share = f4((at >> 1) & 0x7FFFFFFF) * f4(2.0**-31)
         inside = (i >= 0) & (i < last)
         place[INDEX + lane] = min(max(i, 0), last)
         place[NEXT_INDEX + lane] = min(max(i + 1, 0), last)
         narrow[FRACTION + lane] = share if inside else f4(0.0)
+    line_before = min(max(line - wedge.forward, 0), wedge.last_of_all)
+    part = f4(back)
     crossing(narrow, place, lanes, flat_ground, wedge, line, link.tx_height_m, CROSSING)
+    if back > 0.0:
+        crossing(
+            narrow, place, lanes, flat_ground, wedge, line_before, link.tx_height_m, LAST_CROSSING
+        )
+        for lane in range(lanes):
+            here = narrow[CROSSING + lane]
+            ground[sample, lane] = here + part * (narrow[LAST_CROSSING + lane] - here)
+    else:
+        for lane in range(lanes):
+            ground[sample, lane] = narrow[CROSSING + lane]
     if flat_obstacle.size > 0:
-        crossing(narrow, place, lanes, flat_obstacle, wedge, line, 0.0, WOOD)
+        crossing(narrow, place, lanes, flat_obstacle, wedge, line, 0.0, CROSSING)
+        crossing(narrow, place, lanes, flat_obstacle, wedge, line_before, 0.0, LAST_CROSSING)
+        for lane in range(lanes):
+            here = narrow[CROSSING + lane]
+            surface[sample, lane] = here + part * (narrow[LAST_CROSSING + lane] - here)
 
 
 @scalar
-def next_line(narrow: NDArray, place: NDArray, lanes: int) -> None:
-    """Move on: the present crossing becomes the last, the lanes' edges shift."""
-    for lane in range(lanes):
-        narrow[LAST_CROSSING + lane] = narrow[CROSSING + lane]
-    for lane in range(lanes):
-        narrow[LAST_WOOD + lane] = narrow[WOOD + lane]
+def next_line(place: NDArray, lanes: int) -> None:
+    """Move on: the lanes' edges shift."""
     for edge in range(lanes + 1):
         place[EDGE + edge] += place[EDGE_STEP + edge]
-
-
-@scalar
-def take_sample(
-    narrow: NDArray,
-    ground: NDArray,
-    surface: NDArray,
-    lanes: int,
-    sample: int,
-    share: float,
-    has_obstacles: bool,
-) -> None:
-    """Ground (and obstacles) a share of the way from the last crossing to the present one."""
-    part = f4(share)
-    for lane in range(lanes):
-        last = narrow[LAST_CROSSING + lane]
-        ground[sample, lane] = last + part * (narrow[CROSSING + lane] - last)
-    if has_obstacles:
-        for lane in range(lanes):
-            last = narrow[LAST_WOOD + lane]
-            surface[sample, lane] = last + part * (narrow[WOOD + lane] - last)
 
 
 @scalar

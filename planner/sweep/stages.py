@@ -7,7 +7,6 @@ from planner.sweep.course import Course
 from planner.sweep.extremes import search
 from planner.sweep.own_line import count_cleared, start_search
 from planner.sweep.sampling_lines import (
-    cross_line,
     include_sample,
     next_line,
     raise_horizon,
@@ -100,14 +99,25 @@ def sample_line(
     course: Course,
     taken: int,
     t: float,
-    last_t: float,
 ) -> int:
     """Take the samples between the last line and this one; how many there are by now."""
     lanes = course.lanes
-    cross_line(narrow, place, lanes, flat_ground, flat_obstacle, wedge, line, link)
     while (taken + 1.0) / course.stretch <= t:
-        share = ((taken + 1.0) / course.stretch - last_t) / (t - last_t)
-        take_sample(narrow, bent_ground, surface, lanes, taken, share, flat_obstacle.size > 0)
+        back = t - (taken + 1.0) / course.stretch
+        take_sample(
+            narrow,
+            place,
+            bent_ground,
+            surface,
+            flat_ground,
+            flat_obstacle,
+            lanes,
+            wedge,
+            line,
+            back,
+            taken,
+            link,
+        )
         taken += 1
-    next_line(narrow, place, lanes)
+    next_line(place, lanes)
     return taken

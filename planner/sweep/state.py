@@ -21,7 +21,7 @@ LEAST_DISTANCE_M = 1.0
 LANES = 32
 # The last samples before a cell lie on the cell's own straight line to the mast, where its exact
 # path has them: an edge close to the receiver matters most, and half a cell aside is too far there.
-OWN_SAMPLES = 2  # at most 3: sample number q must lie between the q-th and the (q-1)-th line
+OWN_SAMPLES = 3  # sample q must lie between the q-th and the (q-1)-th line; of a fourth some do not
 BLOCK = 16  # samples that share one bound
 GROUP = 4  # blocks that share one further bound
 REGION = 16  # blocks that share one more
@@ -74,6 +74,7 @@ class Wedge(NamedTuple):
     first_line: int  # nearest line
     first_t: float  # its distance from the mast in cells, above 0 and at most 1
     lateral_last: int  # largest index along a line in the terrain
+    last_of_all: int  # number of its last line
     line_stride: int  # from line to line, and along a line, in the terrain's flat array
     lateral_stride: int
     line_low: int  # the window's first and last line and place along a line
@@ -112,10 +113,8 @@ class Fan(NamedTuple):
 FRACTION = 0 * LANES  # between the two cells beside a crossing
 LOWER = 1 * LANES  # ground of those two cells
 UPPER = 2 * LANES
-CROSSING = 3 * LANES  # ground where the radial crosses the present line
-LAST_CROSSING = 4 * LANES  # and the line before
-WOOD = 5 * LANES  # obstacles at the same two places
-LAST_WOOD = 6 * LANES
+CROSSING = 3 * LANES  # ground or obstacles on a line beside a sample
+LAST_CROSSING = 4 * LANES  # and on the line before it
 BULGE = 7 * LANES  # of the earth, per line squared
 BULGE_DRIFT = 8 * LANES  # by how much less of it per line: the projection's scale changes
 SURFACE_SLOPE = 9 * LANES  # steepest bent surface seen from the mast so far, per step

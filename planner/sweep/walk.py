@@ -51,7 +51,6 @@ def _walk(
     recalled[0] = 0
     taken, included, risen = 0, 0, 0
     line = wedge.first_line
-    last_t = 0.0
     t = wedge.first_t
     while wedge.line_low <= line <= wedge.line_high and t <= course.last_t:
         steps = t * course.stretch
@@ -137,9 +136,7 @@ def _walk(
             course,
             taken,
             t,
-            last_t,
         )
-        last_t = t
         t += 1.0
         line += wedge.forward
 
