@@ -21,6 +21,7 @@ So names and colours go to two places:
 from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager, suppress
 from pathlib import Path
+from typing import Any
 from xml.etree import ElementTree
 
 import numpy as np
@@ -85,7 +86,6 @@ def open_layer(
     path = Path(path)
     descriptions = (description,) if isinstance(description, str) else tuple(description)
     kind = np.dtype(dtype)
-    is_float = np.issubdtype(kind, np.floating)
     profile = {
         "driver": "GTiff",
         "width": grid.cols,
@@ -99,11 +99,8 @@ def open_layer(
         "blockxsize": TILE_CELLS,
         "blockysize": TILE_CELLS,
         "interleave": "pixel",
-        "compress": "deflate",
-        "zlevel": 1 if is_float else 6,
-        "predictor": 3 if is_float else 1,
-        "num_threads": 1,
         "bigtiff": "if_safer",
+        **_compression(kind),
     }
     with replaced(path) as temporary:
         with _gdal_errors(path), _settings():
@@ -247,6 +244,16 @@ def write_layer(
         if categories is not None or colours:
             layer.name_classes(categories or (), colours)
         layer.write_rows(0, array)
+
+
+def _compression(kind: np.dtype[Any]) -> dict[str, Any]:
+    is_float = np.issubdtype(kind, np.floating)
+    return {
+        "compress": "deflate",
+        "zlevel": 1 if is_float else 6,
+        "predictor": 3 if is_float else 1,
+        "num_threads": 1,
+    }
 
 
 def _settings() -> rasterio.Env:
