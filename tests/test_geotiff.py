@@ -12,7 +12,7 @@ from pyproj import CRS
 from planner.errors import OutputError
 from planner.io import geotiff
 from planner.io.atomic import replaced
-from planner.io.geotiff import write_layer
+from planner.io.geotiff import open_layer, write_layer
 from planner.terrain import Grid
 
 GRID = Grid(
@@ -132,6 +132,125 @@ def test_same_input_gives_the_same_bytes(tmp_path):
             tags={key: key for key in keys},
         )
     assert (tmp_path / "c.tif").read_bytes() == (tmp_path / "d.tif").read_bytes()
+
+
+SIGNAL_LAYER = {
+    "dtype": np.float32,
+    "description": "received signal of the best sector",
+    "unit": "dBm",
+    "nodata": np.nan,
+    "tags": {"FREQUENCY_MHZ": "5600", "MODEL": "delta-Bullington <P.526>"},
+}
+SERVER_LAYER = {
+    "dtype": np.int16,
+    "description": "best server",
+    "unit": "",
+    "nodata": -1,
+    "tags": {"VERSION": "1"},
+}
+
+
+@pytest.mark.parametrize("rows", [256, 512, 700])
+def test_the_height_of_the_bands_is_not_in_the_bytes(tmp_path, rows):
+    """Two layers open at once, fed in turns and named at the end: the bytes of whole ones."""
+    _write_signal(tmp_path / "signal.tif")
+    _write_servers(tmp_path / "servers.tif")
+    banded = tmp_path / "banded"
+    with (
+        open_layer(banded / "signal.tif", GRID, **SIGNAL_LAYER) as signal,
+        open_layer(banded / "servers.tif", GRID, **SERVER_LAYER) as servers,
+    ):
+        for start in range(0, 700, rows):
+            signal.write_rows(start, _signal()[start : start + rows])
+            servers.write_rows(start, _servers()[start : start + rows])
+        servers.name_classes(NAMES, COLOURS)
+    assert sorted(file.name for file in banded.iterdir()) == [
+        "servers.tif",
+        "servers.tif.aux.xml",
+        "signal.tif",
+    ]
+    for file in banded.iterdir():
+        assert file.read_bytes() == (tmp_path / file.name).read_bytes(), file.name
+
+
+def test_bytes_do_not_depend_on_what_gdal_keeps_in_memory(tmp_path, monkeypatch):
+    """With room for one tile, so that others are written early, and for all of them."""
+    signal = np.stack([_signal(), _signal() + 1])
+    options = {**SIGNAL_LAYER, "description": ["loss", "gain"]}
+    for name, room in (("small", 2**18), ("large", 2**26)):
+        monkeypatch.setattr(geotiff, "CACHE_BYTES", room)
+        with open_layer(tmp_path / f"{name}.tif", GRID, **options) as layer:
+            layer.write_rows(0, signal)
+    assert (tmp_path / "small.tif").read_bytes() == (tmp_path / "large.tif").read_bytes()
+
+
+def test_two_bands_with_a_description_each(tmp_path):
+    """Both come back, band heights do not matter, overviews are there for each."""
+    both = np.stack([_signal(), _signal() - 3])
+    options = {**SIGNAL_LAYER, "description": ["loss upwards", "loss downwards"]}
+    with open_layer(tmp_path / "both.tif", GRID, **options) as layer:
+        layer.write_rows(0, both[:, :512])
+        layer.write_rows(512, both[:, 512:])
+    with open_layer(tmp_path / "whole.tif", GRID, **options) as layer:
+        layer.write_rows(0, both)
+    with rasterio.open(tmp_path / "both.tif") as layer:
+        np.testing.assert_array_equal(layer.read(), both)
+        assert layer.descriptions == ("loss upwards", "loss downwards")
+        assert layer.units == ("dBm", "dBm")
+        assert [layer.overviews(band) for band in (1, 2)] == [[2, 4], [2, 4]]
+    assert (tmp_path / "both.tif").read_bytes() == (tmp_path / "whole.tif").read_bytes()
+
+
+def test_bands_of_rows_out_of_order_or_missing_are_refused(tmp_path):
+    """A gap, a height between tiles, another type, a wrong width, rows missing at the end."""
+    signal = _signal()
+
+    def written(*bands):
+        with open_layer(tmp_path / "x.tif", GRID, **SIGNAL_LAYER) as layer:
+            for start, array in bands:
+                layer.write_rows(start, array)
+
+    with pytest.raises(ValueError, match=r"rows 512 to 700 after 256; bands of rows come in order"):
+        written((0, signal[:256]), (512, signal[512:]))
+    with pytest.raises(ValueError, match=r"rows 0 to 300 after 0; .* multiple of 256"):
+        written((0, signal[:300]))
+    with pytest.raises(ValueError, match="float64 in a layer of float32"):
+        written((0, signal.astype(float)))
+    with pytest.raises(ValueError, match=r"array \(256, 599\) on a grid \(700, 600\) of 1 band"):
+        written((0, signal[:256, 1:]))
+    with pytest.raises(ValueError, match=r"array \(700, 600\) on a grid .*, from row 256"):
+        written((0, signal[:256]), (256, signal))
+    with pytest.raises(ValueError, match="512 of 700 rows were written"):
+        written((0, signal[:512]))
+    assert list(tmp_path.iterdir()) == []
+
+
+def test_an_exception_among_the_bands_leaves_the_older_layers(tmp_path):
+    """Of two layers that are open both keep what stood there before; nothing else is left."""
+    (tmp_path / "signal.tif").write_bytes(b"older")
+
+    def interrupted():
+        with (
+            open_layer(tmp_path / "signal.tif", GRID, **SIGNAL_LAYER) as signal,
+            open_layer(tmp_path / "servers.tif", GRID, **SERVER_LAYER) as servers,
+        ):
+            signal.write_rows(0, _signal())
+            servers.write_rows(0, _servers()[:256])
+            servers.name_classes(NAMES, COLOURS)
+            raise KeyboardInterrupt
+
+    with pytest.raises(KeyboardInterrupt):
+        interrupted()
+    assert [file.name for file in tmp_path.iterdir()] == ["signal.tif"]
+    assert (tmp_path / "signal.tif").read_bytes() == b"older"
+
+
+def test_each_tag_stands_in_the_file_once(tmp_path):
+    """Classes that are named after the data leave no second copy of the tags behind."""
+    _write_servers(tmp_path / "servers.tif")
+    content = (tmp_path / "servers.tif").read_bytes()
+    for text in (b'"VERSION"', b'"CATEGORY_1"', b'"CATEGORY_1_COLOUR"', b"best server"):
+        assert content.count(text) == 1, text
 
 
 def test_side_files_of_an_older_layer_do_not_linger(tmp_path):

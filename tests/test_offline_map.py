@@ -2,14 +2,16 @@
 
 import datetime
 import re
+from dataclasses import replace
 from html.parser import HTMLParser
 from pathlib import Path
 
 import numpy as np
 import pytest
+from affine import Affine
 from browser import chromium, opened, requests_of, sized
 from places import latitude_longitude, plain
-from pyproj import Transformer
+from pyproj import CRS, Transformer
 
 from planner.antenna import formula_pattern, gain_table
 from planner.coverage import combine
@@ -19,7 +21,8 @@ from planner.handout.map_cells import MapCells
 from planner.handout.mercator import mercator_view
 from planner.handout.offline_map import write_offline_map
 from planner.network import Customer, Radio, Sector, Terminal, Tower
-from planner.sweep import path_field
+from planner.sweep import OUT_OF_RANGE, path_field
+from planner.terrain import Grid
 
 __all__ = ["chromium"]  # a fixture
 HOSTILE = '<script>window.hurt=1</script></script>"><img src=x onerror="window.hurt=2">{{7*7}}'
@@ -227,6 +230,76 @@ def test_pixels_lie_within_half_a_cell_of_the_truth():
             row, col = grid.row_col(easting, northing)
             assert abs(view.cell_index[r, c] // grid.cols - row) <= 0.6
             assert abs(view.cell_index[r, c] % grid.cols - col) <= 0.6
+
+
+def test_cells_picked_by_bands_are_those_of_the_whole(page):
+    """Bands of any height keep what one band keeps: each pixel that of its cell, else nothing."""
+    _, terrain, coverage = page
+    grid = terrain.grid
+    rng = np.random.default_rng(6)
+    shape = (grid.rows, grid.cols)
+    coverage = replace(
+        coverage,
+        received_signal_dbm=rng.normal(-80.0, 9.0, shape).astype(np.float32),
+        server_margin_db=rng.normal(9.0, 4.0, shape).astype(np.float32),
+        best_server=rng.integers(1, 5, shape).astype(np.int16),
+        status=rng.integers(0, 3, shape).astype(np.uint8),
+    )
+    index = mercator_view(grid, 97).cell_index.copy()
+    index[:3, :5] = -1
+    view = replace(mercator_view(grid, 97), cell_index=index)
+    names = ("received_signal_dbm", "server_margin_db", "best_server", "status")
+    outside = (np.nan, np.nan, -1, OUT_OF_RANGE)
+    for height in (1, 30, grid.rows):
+        cells = MapCells(view, grid)
+        for start in range(0, grid.rows, height):
+            part = slice(start, start + height)
+            arrays = {name: getattr(coverage, name)[part] for name in names}
+            cells.take_rows(start, replace(coverage, **arrays))
+        for name, nothing in zip(names, outside, strict=True):
+            layer = getattr(coverage, name).ravel()
+            expected = [nothing if i < 0 else layer[i] for i in view.cell_index.ravel()]
+            actual = getattr(cells, name)
+            assert actual.dtype == layer.dtype
+            np.testing.assert_array_equal(expected, actual.ravel(), err_msg=name)
+    assert 0 in view.cell_index % grid.cols  # the first cell of a row, and of a band
+
+
+@pytest.mark.parametrize("longest", [2048, 300])
+def test_pixels_show_the_cell_that_the_projections_give(longest):
+    """Far from the central meridian and at 64 degrees north: as every pixel's own projection."""
+    transform = Affine(100.0, 0.0, 700_000.0, 0.0, -100.0, 7_200_000.0)
+    grid = Grid(crs=CRS.from_epsg(32633), transform=transform, rows=1000, cols=900)
+    view = mercator_view(grid, longest)
+    rows, cols = np.mgrid[: view.cell_index.shape[0], : view.cell_index.shape[1]] + 0.5
+    x = view.transform.c + cols * view.transform.a
+    y = view.transform.f + rows * view.transform.e
+    back = Transformer.from_crs(3857, grid.crs, always_xy=True)
+    row, col = grid.row_col(*back.transform(x, y))
+    inside = grid.contains(row, col)
+    expected = np.where(inside, np.rint(row) * grid.cols + np.rint(col), -1)
+    # Only where a pixel's centre lies within 0.02 cells of a border may the neighbour be taken.
+    shown = view.cell_index >= 0
+    down = np.abs(view.cell_index // grid.cols - row)[shown]
+    right = np.abs(view.cell_index % grid.cols - col)[shown]
+    assert np.maximum(down, right).max() < 0.52
+    assert (expected != view.cell_index).mean() < 0.01
+    assert shown.any()
+    assert not shown.all()
+
+
+def test_hillshade_is_that_of_the_whole_ground():
+    """Picked cells have the slope that numpy's gradient gives to the whole, edges included."""
+    ground = np.random.default_rng(4).normal(0, 20, (30, 40)).astype(np.float32)
+    ground[10, 10] = np.nan
+    southwards, eastwards = np.gradient(ground.astype(float) * 1.5, 25.0)
+    normal = np.stack([-eastwards, southwards, np.ones_like(eastwards)])
+    azimuth, elevation = np.radians(315.0), np.radians(40.0)
+    sun = [np.sin(azimuth) * np.cos(elevation), np.cos(azimuth) * np.cos(elevation)]
+    light = np.tensordot([*sun, np.sin(elevation)], normal, 1) / np.linalg.norm(normal, axis=0)
+    row, col = np.array([[0, 29, 10, 11, 17]]), np.array([[0], [39], [10], [5]])
+    actual = hillshade(ground, 25.0, row, col)
+    np.testing.assert_allclose(actual, np.clip(light, 0.0, 1.0)[row, col], rtol=0, atol=1e-6)
 
 
 def test_hillshade_of_a_tilted_plane_is_lamberts_cosine():

@@ -30,6 +30,9 @@ MARGIN_FLOOR_DB = -40.0  # code 1; negative where the strongest sector misses it
 NOTHING = 0  # code of the read-out: not computed
 _TONES = 48
 _DOT_SPACING_PX = 7
+# Of zlib, measured on 2,048 x 2,048 pixels: against the highest level three pictures and the values
+# take 0.5 s of CPU time instead of 1.6 s, and the page grows by 3 %.
+_PNG_LEVEL, _PACK_LEVEL = 4, 6
 _ROWS_AT_ONCE = 128  # of the relief: what is in between is then small
 _ALL, _BUT_FIRST, _BUT_LAST = slice(None), slice(1, None), slice(None, -1)
 _Place = tuple[slice, slice]
@@ -148,9 +151,12 @@ def _png(codes: NDArray[np.uint8], palette: Sequence[tuple[int, int, int, int]])
     picture = Image.fromarray(codes)
     picture.putpalette([value for colour in palette for value in colour[:3]])
     file = io.BytesIO()
-    picture.save(file, "PNG", optimize=True, transparency=bytes(colour[3] for colour in palette))
+    clear = bytes(colour[3] for colour in palette)
+    picture.save(file, "PNG", compress_level=_PNG_LEVEL, transparency=clear)
     return "data:image/png;base64," + base64.b64encode(file.getvalue()).decode("ascii")
 
 
 def _packed(codes: NDArray) -> str:
-    return base64.b64encode(zlib.compress(np.ascontiguousarray(codes).tobytes(), 9)).decode("ascii")
+    return base64.b64encode(
+        zlib.compress(np.ascontiguousarray(codes).tobytes(), _PACK_LEVEL)
+    ).decode("ascii")

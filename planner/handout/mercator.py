@@ -54,8 +54,8 @@ def mercator_view(grid: Grid, longest_side_px: int = LONGEST_SIDE_PX) -> Mercato
 def _cell_index(grid: Grid, transform: Affine, height: int, width: int) -> NDArray[np.int32]:
     """Number of the cell under the centre of each pixel, row by row; -1 outside the grid.
 
-    Exact at every 16th row and column of pixels and linear in between: over so short a way both
-    projections differ from a plane by far less than a cell.
+    Exact at every 16th row and column of pixels and linear in between: for cells of 100 m shown at
+    a third of their number, 64 degrees north, that is within 0.02 cells, for finer ones nearer.
     """
     down = np.append(np.arange(0, height, _LATTICE_PX), height) + 0.5
     right = np.append(np.arange(0, width, _LATTICE_PX), width) + 0.5
