@@ -17,6 +17,7 @@ from planner.sweep.state import (
     PLACES,
     RECALLED,
     REGION,
+    SPACING,
     WIDE_ROWS,
     Fan,
     Link,
@@ -45,7 +46,7 @@ def fans(reach: int) -> list[tuple[int, int, int, int]]:
 @scalar
 def _last_radial(outer: int) -> int:
     """Number of the first radial that passes beyond the wedge's diagonal."""
-    return math.ceil(math.asinh(1.0) * outer)
+    return math.ceil(math.asinh(1.0) * outer / SPACING)
 
 
 @scalar
@@ -113,11 +114,11 @@ class Course(NamedTuple):
 def course_of(
     outer: int, first_radial: int, inner: int, has_obstacles: bool, mast: Mast, link: Link
 ) -> Course:
-    """The course of one fan; cosh(r / outer) is the length of radial r per line."""
+    """The course of one fan; cosh(r * SPACING / outer) is the length of radial r per line."""
     lanes = min(LANES, _last_radial(outer) - first_radial + 1)
     last_radial = first_radial + lanes - 1
-    flattest = max(first_radial, -last_radial, 0) / outer
-    steepest = max(abs(first_radial), abs(last_radial)) / outer
+    flattest = max(first_radial, -last_radial, 0) * SPACING / outer
+    steepest = max(abs(first_radial), abs(last_radial)) * SPACING / outer
     # The scale changes little over a window; 1 % more than the radius is more than enough.
     in_range = link.radius_m * mast.scale * 1.01 / mast.cell_m + 1.0
     clearing_steps = 0.0
@@ -126,7 +127,7 @@ def course_of(
     spherical_cells = _spherical_from_m(mast, link) * mast.scale * 0.99 / mast.cell_m
     return Course(
         lanes,
-        math.cosh((first_radial + 0.5 * (lanes - 1)) / outer),
+        math.cosh((first_radial + 0.5 * (lanes - 1)) * SPACING / outer),
         inner / math.cosh(steepest) - 1.0,
         min(outer / math.cosh(flattest) + 1.0, in_range / math.cosh(flattest)),
         link.obstacle_clearing_m * link.obstacle_clearing_m / (2.0 * link.earth_radius_m),

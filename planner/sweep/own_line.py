@@ -32,8 +32,8 @@ from planner.sweep.state import (
     PER_METRE,
     RX_ABOVE,
     RX_BENT,
+    SAMPLE_SHARE,
     SHARE,
-    SPACING,
     SURFACE_SLOPE,
     TX_SLOPE,
     WANTED,
@@ -190,7 +190,7 @@ def own_profile(
         across = f4(wide[ACROSS + lane])
         length = np.sqrt(square + across * across) - f4(1e-3)
         whole = f4(np.int32(length))
-        narrow[SPACING + lane] = one / (whole + one)
+        narrow[SAMPLE_SHARE + lane] = one / (whole + one)
     for lane in range(lanes):
         distance = narrow[DISTANCE + lane]
         inverse = one / distance
@@ -231,7 +231,7 @@ def _own_sample(
     lowest_possible = f4(-np.inf)
     for lane in range(lanes):
         distance = narrow[DISTANCE + lane]
-        share = f4(q) * narrow[SPACING + lane]
+        share = f4(q) * narrow[SAMPLE_SHARE + lane]
         exists = share < f4(1.0 - 1e-6)
         share = share if exists else f4(0.5)
         part = start - fall * share if exists else none

@@ -26,6 +26,7 @@ from planner.sweep.state import (
     NEXT_INDEX,
     REGION,
     RX_ABOVE,
+    SPACING,
     SUM,
     SURFACE_SLOPE,
     UPPER,
@@ -50,16 +51,17 @@ def start_fan(
 ) -> None:
     """Set up the lanes of the radials ``first_radial`` and following.
 
-    Radial r crosses the line at distance t (in cells) at sinh(r / outer) * t beside the mast: where
-    they reach the circle of radius ``outer`` cells all radials are a cell apart along their line.
+    Radial r crosses the line at distance t (in cells) at sinh(r * SPACING / outer) * t beside the
+    mast: where they reach the circle of radius ``outer`` cells all radials are SPACING cells apart
+    along their line.
     """
     for edge in range(lanes + 1):
-        slope = math.sinh((first_radial + edge - 0.5) / outer)
+        slope = math.sinh((first_radial + edge - 0.5) * SPACING / outer)
         place[EDGE + edge] = math.floor((wedge.side + slope * wedge.first_t) * FIXED + 0.5)
         place[EDGE_STEP + edge] = math.floor(slope * FIXED + 0.5)
     east, north = 0.0, 0.0
     for lane in range(lanes):
-        slope = math.sinh((first_radial + lane) / outer)
+        slope = math.sinh((first_radial + lane) * SPACING / outer)
         if wedge.along_rows:
             east, north = wedge.forward * mast.cell_m, -slope * mast.cell_m
         else:

@@ -19,6 +19,9 @@ COMPUTED, OUT_OF_RANGE, NO_DATA, CROSSES_HOLE = 0, 1, 2, 3
 LEAST_DISTANCE_M = 1.0
 
 LANES = 32
+# Cells between radials on a ring's outer circle. Half as far a cell's own line to the mast may lie
+# from its radial: 1 takes two thirds of the time and gives half as much again of difference.
+SPACING = 0.7
 # The last samples before a cell lie on the cell's own straight line to the mast, where its exact
 # path has them: an edge close to the receiver matters most, and half a cell aside is too far there.
 OWN_SAMPLES = 3  # sample q must lie between the q-th and the (q-1)-th line; of a fourth some do not
@@ -140,7 +143,7 @@ OWN_WOOD = 32 * LANES  # to 35: obstacles there
 CELL_GROUND_SLOPE = 36 * LANES  # steepest bare ground seen from the mast
 DISTANCE = 37 * LANES  # true, to the cell
 GROUND = 38 * LANES  # of the cell
-SPACING = 39 * LANES  # of the cell's exact samples, as a share of its distance
+SAMPLE_SHARE = 39 * LANES  # spacing of the cell's exact samples over its distance
 PER_METRE = 40 * LANES  # steps per true metre on the way to the cell
 NU_SCALE = 41 * LANES  # by which BEST_NEAR becomes nu
 LOSS = 42 * LANES

@@ -1,8 +1,8 @@
 """The walk of fans of radials that gives every cell in range its path loss.
 
 Cells around the mast are split into four wedges by their longer axis, and each wedge into rings
-that double in radius. In a ring, radials run from the mast to its outer circle, where they are a
-cell apart, so they are half a cell to a cell apart where the ring has cells; a cell belongs to the
+that double in radius. In a ring, radials run from the mast to its outer circle, where they are
+0.7 cells apart, so they are 0.35 to 0.7 cells apart where the ring has cells; a cell belongs to the
 radial between whose edges it lies. Each cell is written once, by one radial, whatever the number of
 threads. The cell's distance, its ground and the last samples before it are its own; only the
 terrain further towards the mast is the radial's.
