@@ -174,10 +174,10 @@ def test_the_height_of_the_bands_is_not_in_the_bytes(tmp_path, rows):
 
 
 def test_bytes_do_not_depend_on_what_gdal_keeps_in_memory(tmp_path, monkeypatch):
-    """With room for one tile, so that others are written early, and for all of them."""
+    """With room for little more than one row of tiles of both bands, and for all of them."""
     signal = np.stack([_signal(), _signal() + 1])
     options = {**SIGNAL_LAYER, "description": ["loss", "gain"]}
-    for name, room in (("small", 2**18), ("large", 2**26)):
+    for name, room in (("small", 2**21), ("large", 2**26)):
         monkeypatch.setattr(geotiff, "CACHE_BYTES", room)
         with open_layer(tmp_path / f"{name}.tif", GRID, **options) as layer:
             layer.write_rows(0, signal)

@@ -57,7 +57,9 @@ from planner.terrain import Grid
 Colour = tuple[int, int, int, int]  # red, green, blue, opacity; 0 to 255
 
 TILE_CELLS = 256
-CACHE_BYTES = 64 * 2**20  # tiles that GDAL keeps in memory, of all open layers together
+# Tiles that GDAL keeps in memory, of all open layers together; left alone it takes 5 % of the RAM.
+# Must hold a row of tiles of every band of one layer, or tiles are written twice.
+CACHE_BYTES = 64 * 2**20
 NO_DATA_NAME = "no data"
 
 
