@@ -184,6 +184,23 @@ def test_bytes_do_not_depend_on_what_gdal_keeps_in_memory(tmp_path, monkeypatch)
     assert (tmp_path / "small.tif").read_bytes() == (tmp_path / "large.tif").read_bytes()
 
 
+def test_bytes_do_not_depend_on_the_number_of_threads(tmp_path, monkeypatch):
+    """Levels and classes, open at once: one thread or four."""
+    for threads in (1, 4):
+        monkeypatch.setattr(geotiff, "THREADS", threads)
+        folder = tmp_path / str(threads)
+        with (
+            open_layer(folder / "signal.tif", GRID, **SIGNAL_LAYER) as signal,
+            open_layer(folder / "servers.tif", GRID, **SERVER_LAYER) as servers,
+        ):
+            for start in range(0, 700, 256):
+                signal.write_rows(start, _signal()[start : start + 256])
+                servers.write_rows(start, _servers()[start : start + 256])
+    for name in ("signal.tif", "servers.tif"):
+        one, four = (tmp_path / threads / name for threads in ("1", "4"))
+        assert one.read_bytes() == four.read_bytes(), name
+
+
 def test_two_bands_with_a_description_each(tmp_path):
     """Both come back, band heights do not matter, overviews are there for each."""
     both = np.stack([_signal(), _signal() - 3])

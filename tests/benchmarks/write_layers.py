@@ -37,7 +37,7 @@ SETTINGS: tuple[tuple[str, bool, dict[str, Any]], ...] = (
     (LOSS, False, {"compress": "zstd", "zstd_level": 1}),
     (LOSS, False, {"compress": "lzw"}),
     (LOSS, True, {}),
-    (LOSS, True, {"num_threads": 2}),
+    (LOSS, True, {"num_threads": 1}),
     (LOSS, True, {"predictor": 2}),
     (LOSS, True, {"zlevel": 6}),
     (LOSS, True, {"compress": "zstd", "zstd_level": 1}),
