@@ -2,6 +2,11 @@
 
 from pathlib import Path
 
+import pytest
+
+from planner.errors import PlanError
+from planner.plan import read_plan
+
 PLAN = """\
 name = "West mast at the mill pond"
 
@@ -71,3 +76,10 @@ def write_plan(folder: Path, text: str = PLAN) -> Path:
     path = folder / "plan.toml"
     path.write_text(text, encoding="utf-8")
     return path
+
+
+def problems_of(path: Path) -> list[str]:
+    """What reading a plan refuses it for, line by line."""
+    with pytest.raises(PlanError) as caught:
+        read_plan(path)
+    return [str(problem) for problem in caught.value.problems]

@@ -114,6 +114,7 @@ def test_time_counts_each_kind_of_work(tmp_path: Path, monkeypatch: pytest.Monke
     grid_cells = usual.rows * usual.cols
     for rate, plan_at_rate, cells in (
         ("SWEEP_CELLS_PER_SECOND", plan, usual.cells),
+        ("HEIGHT_CELLS_PER_SECOND", plan, 0),
         ("LAYER_CELLS_PER_SECOND", plan, 2 * usual.cells),
         ("READ_CELLS_PER_SECOND", plan, grid_cells),
         ("RESAMPLED_CELLS_PER_SECOND", plan, 0),
@@ -139,6 +140,36 @@ def test_memory_counts_grid_and_windows(tmp_path: Path) -> None:
     terrain = replace(plan.terrain, obstacles=tmp_path / "terrain.tif")
     with_obstacles = run_estimate(replace(plan, terrain=terrain))
     assert with_obstacles.memory_bytes - usual.memory_bytes == 4 * usual.rows * usual.cols
+
+
+def test_needed_heights_take_time_and_memory(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """A layer that is asked for is counted as another walk over the cells."""
+    plan = site(tmp_path)
+    asking = replace(plan, layers=(*plan.layers, "needed_height"))
+    usual, more = run_estimate(plan), run_estimate(asking)
+    assert more.memory_bytes - usual.memory_bytes == (
+        usual.rows * usual.cols * estimate.HEIGHT_BYTES_PER_CELL
+    )
+    monkeypatch.setattr(estimate, "HEIGHT_CELLS_PER_SECOND", 1.0)
+    assert run_estimate(asking).seconds == pytest.approx(usual.cells + usual.seconds, abs=0.3)
+
+
+def test_masts_are_in_memory_one_at_a_time(tmp_path: Path) -> None:
+    """Two path fields of a tower take no more than one."""
+    one = run_estimate(site(tmp_path))
+    two = run_estimate(
+        site(
+            tmp_path,
+            (
+                "antenna_height_m = 30\nazimuth_deg = 140",
+                "antenna_height_m = 25\nazimuth_deg = 140",
+            ),
+        )
+    )
+    assert len(two.fields) == 2
+    assert two.memory_bytes == one.memory_bytes
 
 
 def test_plain_data(tmp_path: Path) -> None:

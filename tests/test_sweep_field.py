@@ -257,6 +257,23 @@ def test_map_and_single_path_agree_with_obstacles():
     assert np.percentile(np.abs(difference), 95) <= 2.0
 
 
+def test_obstacles_of_no_height_change_nothing():
+    """Where the sphere counts and hills obstruct, with a clearing about the receiver, as well."""
+    rng = np.random.default_rng(6)
+    ground = np.kron(rng.uniform(0.0, 25.0, (50, 50)), np.ones((4, 4))).astype(np.float32)
+    settings = {
+        "radius_m": 9500.0,
+        "frequency_mhz": 700.0,
+        "antenna_height_m": 10.0,
+        "obstacle_clearing_m": 900.0,
+    }
+    bare = field_at(plain(ground=ground, cell_m=100.0), 100.0, 100.0, **settings)
+    none = np.zeros_like(ground)
+    zero = field_at(plain(ground=ground, obstacle=none, cell_m=100.0), 100.0, 100.0, **settings)
+    np.testing.assert_allclose(zero.path_loss_db, bare.path_loss_db, rtol=0, atol=2e-3)
+    np.testing.assert_array_equal(zero.status, bare.status)
+
+
 def test_departure_azimuth_is_the_true_bearing():
     """Against the geodesic on WGS 84, within 0.02 degrees, near the zone's edge as well."""
     terrain = jacksboro()

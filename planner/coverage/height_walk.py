@@ -258,7 +258,7 @@ def walk_heights(
                     single = bottom_step == top_step
                     if single and spherical and narrow[SPHERE + lane] > f4(0.0):
                         narrow[LOSS + lane] += excess_over_sphere_db(
-                            narrow, bent_ground, block_lid, lane, far, t, steps, mast, link
+                            narrow, bent_ground, block_lid, lane, samples, far, t, steps, mast, link
                         )
                     loss = narrow[LOSS + lane]
                     # A stretch is not dropped for what rounding may have done.
@@ -280,41 +280,34 @@ def walk_heights(
                         per_metre = narrow[PER_METRE + lane]
                         horizon = narrow[TX_SLOPE + lane]
                         slope = max(horizon, narrow[DIRECT + lane]) * per_metre
-                        spare = _to_spare_db(
-                            slope,
-                            east,
-                            north,
-                            levels,
-                            first,
-                            nodes_per_row,
-                            azimuth_places,
-                            elevation_places,
-                            mounted,
-                            boresight,
-                            budget,
-                            bend,
-                        )
+                        low_end = slope
                         if not single:
-                            lower = slope - step * f4(top_step - bottom_step) / distance
-                            lower = max(lower, horizon * per_metre)
-                            if slope - lower > CLOSE_SLOPES:
-                                spare = f4(aim.peak_db)
-                            else:
-                                below = _to_spare_db(
-                                    lower,
-                                    east,
-                                    north,
-                                    levels,
-                                    first,
-                                    nodes_per_row,
-                                    azimuth_places,
-                                    elevation_places,
-                                    mounted,
-                                    boresight,
-                                    budget,
-                                    bend,
+                            low_end -= step * f4(top_step - bottom_step) / distance
+                            low_end = max(low_end, horizon * per_metre)
+                        spare = f4(aim.peak_db)
+                        if slope - low_end <= CLOSE_SLOPES:
+                            spare = f4(-np.inf)
+                            for end in range(1 if single else 2):
+                                toward = slope if end == 0 else low_end
+                                spare = max(
+                                    spare,
+                                    _to_spare_db(
+                                        toward,
+                                        east,
+                                        north,
+                                        levels,
+                                        first,
+                                        nodes_per_row,
+                                        azimuth_places,
+                                        elevation_places,
+                                        mounted,
+                                        boresight,
+                                        budget,
+                                        bend,
+                                    ),
                                 )
-                                spare = max(spare, below) + GAIN_BEND_DB
+                            if not single:
+                                spare += GAIN_BEND_DB
                         passes = spare - loss >= -slack
                     if not passes:
                         depth[lane] -= 1

@@ -2,7 +2,8 @@
 
 Counts of cells are those of the circles. Time and memory are rough: the rates below were measured
 with hills for terrain on a machine with two processor cores that had other work to do as well.
-Compiling, which the first run after installing does (about a minute), and customers are left out.
+Compiling, which the first run after installing does (about half a minute), and customers are left
+out.
 """
 
 import math
@@ -19,18 +20,20 @@ from planner.plan.read import Plan
 from planner.terrain import Grid
 
 # Rates of a run, on two cores.
-SWEEP_CELLS_PER_SECOND = 1.0e6  # path loss of one mast's cells
-LAYER_CELLS_PER_SECOND = 1.8e7  # one sector added to the layers
+SWEEP_CELLS_PER_SECOND = 2.5e6  # path loss of one mast's cells
+HEIGHT_CELLS_PER_SECOND = 0.7e6  # needed heights of one mast's cells
+LAYER_CELLS_PER_SECOND = 5.0e7  # one sector added to the layers
 READ_CELLS_PER_SECOND = 2.5e7  # terrain read as it is
 RESAMPLED_CELLS_PER_SECOND = 2.5e6  # terrain read and resampled
-WRITTEN_CELLS_PER_SECOND = 1.0e7  # one layer written, with its overviews
+WRITTEN_CELLS_PER_SECOND = 2.0e7  # one layer written, with its overviews
 FIXED_SECONDS = 4.0  # loading, the map, the record
 
 # Memory of a run.
-GRID_BYTES_PER_CELL = 4 + 4 + 2 + 4 + 4 + 4  # ground, signal, server, second, margin, one copy
+GRID_BYTES_PER_CELL = 4  # ground; the layers are made in bands of rows
 OBSTACLE_BYTES_PER_CELL = 4
-FIELD_BYTES_PER_CELL = 4 + 4 + 1  # loss, elevation and status of every cell of a mast's window
-FIXED_BYTES = 400_000_000  # the program with its libraries
+FIELD_BYTES_PER_CELL = 4 + 4 + 4 + 1 + 4  # loss, elevation, clearance, status, ground seen
+HEIGHT_BYTES_PER_CELL = 2 * (2 + 2)  # needed heights of the grid and of one mast
+FIXED_BYTES = 300_000_000  # the program with its libraries, bands of rows
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -119,6 +122,11 @@ def _seconds(plan: Plan, grid: Grid, unresampled: bool, fields: Sequence[FieldEs
         FIXED_SECONDS
         + grid_cells / (READ_CELLS_PER_SECOND if unresampled else RESAMPLED_CELLS_PER_SECOND)
         + sum(field.cells for field in fields) / SWEEP_CELLS_PER_SECOND
+        + (
+            sum(field.cells for field in fields) / HEIGHT_CELLS_PER_SECOND
+            if "needed_height" in plan.layers
+            else 0.0
+        )
         + sum(field.cells * field.sectors for field in fields) / LAYER_CELLS_PER_SECOND
         + layers_written * grid_cells / WRITTEN_CELLS_PER_SECOND
     )
@@ -128,8 +136,12 @@ def _memory_bytes(plan: Plan, grid: Grid, fields: Sequence[FieldEstimate]) -> in
     bytes_per_cell = GRID_BYTES_PER_CELL
     if plan.terrain.obstacles is not None:
         bytes_per_cell += OBSTACLE_BYTES_PER_CELL
+    if "needed_height" in plan.layers:
+        bytes_per_cell += HEIGHT_BYTES_PER_CELL
     of_grid = grid.rows * grid.cols * bytes_per_cell
-    of_fields = sum(field.window_cells for field in fields) * FIELD_BYTES_PER_CELL
+    # One field is in memory at a time; those that are done lie on disk.
+    largest = max((field.window_cells for field in fields), default=0)
+    of_fields = largest * FIELD_BYTES_PER_CELL
     return FIXED_BYTES + of_grid + of_fields
 
 

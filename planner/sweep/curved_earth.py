@@ -72,6 +72,7 @@ def obstruction(
     block_lid: NDArray,
     lane: int,
     samples: int,
+    far: int,
     t: float,
     steps: float,
     rx_height: float,
@@ -90,12 +91,12 @@ def obstruction(
     steepest = 0.0
     i = 0
     while i < samples:
-        if i % BLOCK == 0 and i + BLOCK <= samples:
-            near, far = i + 1.0, float(i + BLOCK)
+        if i % BLOCK == 0 and i + BLOCK <= far:
+            first, last = i + 1.0, float(i + BLOCK)
             lid = max(block_lid[2 * (i // BLOCK), lane], block_lid[2 * (i // BLOCK) + 1, lane])
-            bound = lid + far * far * bulge * (1.0 + abs(drift) * far)
-            bound -= min(ray * near, ray * far)
-            if bound <= highest and bound <= steepest * (steps - far):
+            bound = lid + last * last * bulge * (1.0 + abs(drift) * last)
+            bound -= min(ray * first, ray * last)
+            if bound <= highest and bound <= steepest * (steps - last):
                 i += BLOCK
                 continue
         u = i + 1.0
@@ -120,6 +121,7 @@ def excess_over_sphere_db(
     block_lid: NDArray,
     lane: int,
     samples: int,
+    far: int,
     t: float,
     steps: float,
     mast: Mast,
@@ -136,7 +138,7 @@ def excess_over_sphere_db(
     tx_slope = narrow[CELL_GROUND_SLOPE + lane] - rx_height / steps
     if tx_slope > 0.0:
         highest, rx_slope = obstruction(
-            narrow, ground, block_lid, lane, samples, t, steps, rx_height, link
+            narrow, ground, block_lid, lane, samples, far, t, steps, rx_height, link
         )
         tx_surface, rx_surface = smooth_surface_ends(
             float(narrow[V1 + lane]),

@@ -1,8 +1,8 @@
 """What a fan of radials is given and what it keeps, as named tuples that kernels accept.
 
 A fan is up to LANES radials side by side, walked outwards together so that each step is a vector
-operation over the lanes. Loops over lanes run to a length that is known at run time only
-(``place.size``-like, never the constant): a constant one is unrolled before it can be vectorised.
+operation over the lanes. Loops over lanes run to ``lanes``, known at run time only, never to the
+constant: a constant one is unrolled before it can be vectorised.
 What belongs to one lane lies in three flat scratch arrays, one for each kind of number, at the
 offsets below plus the lane's number: loops that stay within one array, at offsets known to the
 compiler, need no check at run time that their arrays are apart.
@@ -24,7 +24,9 @@ LANES = 32
 SPACING = 0.7
 # The last samples before a cell lie on the cell's own straight line to the mast, where its exact
 # path has them: an edge close to the receiver matters most, and half a cell aside is too far there.
-OWN_SAMPLES = 3  # sample q must lie between the q-th and the (q-1)-th line; of a fourth some do not
+# Sample q must lie between the q-th and the (q-1)-th line before the cell's, which of a fourth some
+# do not. own_line.py takes them one by one, so that their offsets are known to the compiler.
+OWN_SAMPLES = 3
 BLOCK = 16  # samples that share one bound
 GROUP = 4  # blocks that share one further bound
 REGION = 16  # blocks that share one more
@@ -136,9 +138,7 @@ CELL_HOLES = 20 * LANES  # 0, or NaN when a hole lies before the cell
 WANTED = 21 * LANES  # 1 where the lane has a cell to compute
 SHARE = 22 * LANES  # to 24: own samples' distance from the cell as a share of the whole
 OWN_BENT = 25 * LANES  # to 27: their bent surface
-OWN_CROSSING = (
-    28 * LANES
-)  # to 31: ground where the cell's own line crosses this line and earlier ones
+OWN_CROSSING = 28 * LANES  # to 31: ground where the cell's own line crosses this line and before
 OWN_WOOD = 32 * LANES  # to 35: obstacles there
 CELL_GROUND_SLOPE = 36 * LANES  # steepest bare ground seen from the mast
 DISTANCE = 37 * LANES  # true, to the cell
@@ -153,9 +153,9 @@ TX_EFFECTIVE = 45 * LANES  # heights above the smooth surface
 RX_EFFECTIVE = 46 * LANES
 V1 = 47 * LANES  # sums of the smooth surface's fit, in steps
 V2 = 48 * LANES
-SPHERE = 49 * LANES  # 1 where the spherical earth may add something
-RX_ABOVE = 50 * LANES  # receiving antenna above the cell's ground
-NARROW_ROWS = 51
+SPHERE = 5 * LANES  # 1 where the spherical earth may add something
+RX_ABOVE = 6 * LANES  # receiving antenna above the cell's ground
+NARROW_ROWS = 49
 
 # Offsets into ``wide``.
 ACROSS = 0 * LANES  # lateral distance of the cell from the mast, in cells

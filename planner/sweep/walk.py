@@ -109,7 +109,7 @@ def _walk(
                 for lane in range(lanes):
                     if narrow[SPHERE + lane] > 0.0:
                         narrow[LOSS + lane] += excess_over_sphere_db(
-                            narrow, bent_ground, block_lid, lane, far, t, steps, mast, link
+                            narrow, bent_ground, block_lid, lane, samples, far, t, steps, mast, link
                         )
             write_cells(
                 narrow,
