@@ -5,6 +5,7 @@ import math
 import numpy as np
 import pytest
 
+from planner.physics._jit import in_single_precision
 from planner.physics.elementary import arctangent, exp, log10
 
 
@@ -55,3 +56,19 @@ def test_compiled_code_is_a_vector_loop(function):
     over(np.ones(3), np.ones(3))
     assembly = next(iter(over.inspect_asm().values()))
     assert "vmulpd" in assembly or "mulpd" in assembly
+
+
+def test_single_precision_keeps_its_digits():
+    """As the docstrings say: 9e-7 for the logarithm, 1e-6 in relative terms for the exponential."""
+    rng = np.random.default_rng(5)
+    log10_single, exp_single = in_single_precision(log10), in_single_precision(exp)
+    arctangent_single = in_single_precision(arctangent)
+    for x in 10.0 ** rng.uniform(-6, 9, 3000):
+        value = np.float32(x)
+        # A float32 of 4 to 8 has a step of 5e-7, one of 8 to 9 of 1e-6.
+        assert log10_single(value) == pytest.approx(math.log10(value), abs=9e-7)
+    for x in rng.uniform(-80, 80, 3000):
+        value = np.float32(x)
+        # The argument's own rounding in units of log 2 grows with it.
+        assert exp_single(value) == pytest.approx(math.exp(value), rel=1e-6 + 1e-7 * abs(x))
+        assert arctangent_single(value) == pytest.approx(math.atan(value), abs=2e-7)
