@@ -5,8 +5,9 @@ import math
 import numpy as np
 import pytest
 
-from planner.physics._jit import in_single_precision
-from planner.physics.elementary import arctangent, exp, log10
+from planner.physics._jit import scalar
+from planner.physics._lanes import LANES, load, store
+from planner.physics.elementary import arcsine, arctangent, exp, log10, power, sine_of_small
 
 
 def test_log10_is_the_library_s():
@@ -19,8 +20,8 @@ def test_log10_is_the_library_s():
     assert log10(1.0) == 0.0
     assert math.isnan(log10(math.nan))
     assert log10(math.inf) == math.inf
-    for power in range(-300, 300, 7):
-        assert log10(10.0**power) == pytest.approx(power, rel=4e-12)
+    for exponent in range(-300, 300, 7):
+        assert log10(10.0**exponent) == pytest.approx(exponent, rel=4e-12)
 
 
 def test_exp_is_the_library_s():
@@ -58,17 +59,48 @@ def test_compiled_code_is_a_vector_loop(function):
     assert "vmulpd" in assembly or "mulpd" in assembly
 
 
-def test_single_precision_keeps_its_digits():
-    """As the docstrings say: 9e-7 for the logarithm, 1e-6 in relative terms for the exponential."""
+def over_lanes(function):
+    """The function over any number of values, in single lanes."""
+
+    @scalar
+    def over(values, out):
+        store(out, 0, function(load(values, 0)))
+
+    def call(values):
+        values = np.asarray(values, dtype=np.float32)
+        padded = np.resize(values, (-(-values.size // LANES), LANES))
+        out = np.empty_like(padded)
+        for row, result in zip(padded, out, strict=True):
+            over(row, result)
+        return out.ravel()[: values.size].astype(float), values.astype(float)
+
+    return call
+
+
+def test_single_lanes_keep_their_digits():
+    """As the docstring says: 9e-7 for the logarithm, 1e-6 in relative terms for the exponential."""
     rng = np.random.default_rng(5)
-    log10_single, exp_single = in_single_precision(log10), in_single_precision(exp)
-    arctangent_single = in_single_precision(arctangent)
-    for x in 10.0 ** rng.uniform(-6, 9, 3000):
-        value = np.float32(x)
-        # A float32 of 4 to 8 has a step of 5e-7, one of 8 to 9 of 1e-6.
-        assert log10_single(value) == pytest.approx(math.log10(value), abs=9e-7)
-    for x in rng.uniform(-80, 80, 3000):
-        value = np.float32(x)
-        # The argument's own rounding in units of log 2 grows with it.
-        assert exp_single(value) == pytest.approx(math.exp(value), rel=1e-6 + 1e-7 * abs(x))
-        assert arctangent_single(value) == pytest.approx(math.atan(value), abs=2e-7)
+    ours, x = over_lanes(log10)(10.0 ** rng.uniform(-6, 9, 3000))
+    # A float32 of 4 to 8 has a step of 5e-7, one of 8 to 9 of 1e-6.
+    np.testing.assert_allclose(ours, np.log10(x), rtol=0.0, atol=9e-7)
+    ours, x = over_lanes(exp)(rng.uniform(-80, 80, 3000))
+    # The argument's own rounding in units of log 2 grows with it.
+    np.testing.assert_array_less(np.abs(ours / np.exp(x) - 1.0), 1e-6 + 1e-7 * np.abs(x))
+    ours, x = over_lanes(arctangent)(np.concatenate([rng.uniform(-80, 80, 3000), [np.inf, 0.0]]))
+    np.testing.assert_allclose(ours, np.arctan(x), rtol=0.0, atol=2e-7)
+    ours, x = over_lanes(arcsine)(np.concatenate([rng.uniform(-1, 1, 3000), [1.0, -1.0]]))
+    np.testing.assert_allclose(ours, np.arcsin(x), rtol=0.0, atol=2e-7)
+    ours, x = over_lanes(sine_of_small)(rng.uniform(-math.pi / 6, math.pi / 6, 3000))
+    np.testing.assert_allclose(ours, np.sin(x), rtol=2e-7)
+    for function in (log10, exp, arctangent):
+        assert np.isnan(over_lanes(function)([math.nan])[0]).all()
+
+
+def test_power_arcsine_and_sine_are_the_library_s():
+    rng = np.random.default_rng(6)
+    for x in 10.0 ** rng.uniform(-5, 5, 1000):
+        assert power(x, -1.0 / 3.0) == pytest.approx(x ** (-1.0 / 3.0), rel=1e-10)
+        assert power(x, 1.425) == pytest.approx(x**1.425, rel=1e-10)
+    for x in np.concatenate([rng.uniform(-1, 1, 1000), [-1.0, 0.0, 1.0]]):
+        assert arcsine(x) == pytest.approx(math.asin(x), rel=1e-10, abs=1e-15)
+        assert sine_of_small(0.52 * x) == pytest.approx(math.sin(0.52 * x), rel=1e-14)

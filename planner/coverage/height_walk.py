@@ -18,13 +18,14 @@ from numpy.typing import NDArray
 
 from planner.antenna.lookup import vector_gain_dbi
 from planner.coverage.sight import MOSTLY_FREE_RATIO
-from planner.physics._jit import in_single_precision, scalar
+from planner.physics._jit import scalar
+from planner.physics._lanes import LANES
 from planner.physics.elementary import log10
 from planner.physics.link import eirp_dbm_scalar, received_signal_dbm_scalar
 from planner.sweep.cells import losses, may_meet_sphere
-from planner.sweep.course import course_of, new_fan, samples_before, wedge_of
-from planner.sweep.curved_earth import excess_over_sphere_db
-from planner.sweep.own_line import count_cleared, own_cells, own_lines, own_profile, own_rays
+from planner.sweep.course import course_of, new_fan, samples_before, tables_of, wedge_of
+from planner.sweep.curved_earth import add_excess_over_sphere
+from planner.sweep.own_line import count_cleared, own_cells, own_profile, own_rays
 from planner.sweep.sampling_lines import start_fan
 from planner.sweep.stages import find_extremes, include_samples, sample_line
 from planner.sweep.state import (
@@ -34,7 +35,7 @@ from planner.sweep.state import (
     DIRECT,
     DISTANCE,
     GROUND,
-    LANES,
+    INTERVALS,
     LOSS,
     PER_METRE,
     RATIO,
@@ -48,7 +49,6 @@ from planner.sweep.state import (
 )
 
 f4 = np.float32
-_log10 = in_single_precision(log10)
 
 DEEPEST = 12  # stretches on a lane's stack: one more than halvings of 1,024 steps
 CLOSE_SLOPES = f4(0.005)  # within them (0.3 degrees) a gain hardly bends
@@ -134,7 +134,7 @@ def _shortest_gain_db(low_rise: float, high_rise: float, distance: float) -> flo
     if low_rise < f4(0.0) < high_rise:
         nearest = f4(0.0)
     square = distance * distance
-    return f4(10.0) * _log10((square + high_rise * high_rise) / (square + nearest * nearest))
+    return 10.0 * log10((square + high_rise * high_rise) / (square + nearest * nearest))
 
 
 @scalar
@@ -154,12 +154,10 @@ def walk_heights(
     has_obstacles = obstacle.size > 0
     fan = new_fan(outer, has_obstacles)
     wedge = wedge_of(wedge_number, ground, mast, *ladder.served.shape)
-    narrow, wide, place = fan.narrow, fan.wide, fan.place
-    bent_ground, surface = fan.bent_ground, fan.bent_surface
-    block_lid, group_lid, region_lid = fan.block_lid, fan.group_lid, fan.region_lid
-    steepness, weight, root = fan.edge_steepness, fan.edge_weight, fan.root_steepness
-    row_steepness, row_weight, recalled = fan.row_steepness, fan.row_weight, fan.recalled
-    flat_surface = surface.reshape(surface.size)
+    at = tables_of(outer)
+    narrow, slopes, place = fan.narrow, fan.wide, fan.place
+    bent_ground, surface = fan.ground, fan.surface
+    lids, tables, recalled = fan.lids, fan.tables, fan.recalled
     flat_ground, flat_obstacle = ground.reshape(ground.size), obstacle.reshape(obstacle.size)
     levels, first, nodes_per_row = aim.levels, aim.first, aim.nodes_per_row
     azimuth_places, elevation_places = aim.azimuth_places, aim.elevation_places
@@ -172,9 +170,7 @@ def walk_heights(
     step = f4(ladder.step_m)
 
     course = course_of(outer, first_radial, inner, has_obstacles, mast, link)
-    lanes = course.lanes
-    start_fan(narrow, place, lanes, first_radial, outer, wedge, mast, link)
-    recalled[0] = 0
+    start_fan(narrow, slopes, place, surface, first_radial, outer, wedge, mast, link, course)
     taken, included, risen = 0, 0, 0
     line = wedge.first_line
     t = wedge.first_t
@@ -183,11 +179,11 @@ def walk_heights(
         samples, far = samples_before(steps, has_obstacles, course.clearing_steps)
         include_samples(
             narrow,
+            place,
             bent_ground,
             surface,
-            block_lid,
-            group_lid,
-            region_lid,
+            lids,
+            at,
             course,
             included,
             samples,
@@ -197,18 +193,26 @@ def walk_heights(
         )
         included, risen = max(included, samples), max(risen, far)
         if t > course.first_t and own_cells(
-            narrow, wide, place, lanes, t, wedge, mast, inner, outer, link.radius_m
+            narrow, slopes, place, t, wedge, mast, inner, outer, link.radius_m
         ):
-            own_lines(
-                narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link
+            own_profile(
+                narrow,
+                slopes,
+                place,
+                surface,
+                flat_ground,
+                flat_obstacle,
+                t,
+                steps,
+                wedge,
+                line,
+                mast,
+                link,
             )
-            own_profile(narrow, wide, lanes, t, steps, has_obstacles, link)
             if far < samples:
-                count_cleared(
-                    narrow, bent_ground, surface, root, lanes, far, samples, steps, link, True
-                )
+                count_cleared(narrow, bent_ground, surface, tables, far, samples, steps, link, True)
             active = 0
-            for lane in range(lanes):
+            for lane in range(INTERVALS):
                 known = narrow[CELL_HOLES + lane] == f4(0.0)
                 known = known and not math.isnan(narrow[GROUND + lane])
                 wanted = known and narrow[WANTED + lane] > f4(0.0)
@@ -222,44 +226,38 @@ def walk_heights(
                     _put(served_and_free, place[CELL + lane], line, wedge, mast, 0)
                     active += 1
             while active > 0:
-                for lane in range(lanes):
+                for lane in range(INTERVALS):
                     if depth[lane] > 0:
                         narrow[RX_ABOVE + lane] = step * f4(high[lane, depth[lane] - 1])
-                own_rays(narrow, lanes, steps, link)
+                own_rays(narrow, steps, link)
                 find_extremes(
                     narrow,
                     bent_ground,
                     surface,
-                    flat_surface,
-                    block_lid,
-                    group_lid,
-                    region_lid,
-                    steepness,
-                    weight,
-                    root,
-                    row_steepness,
-                    row_weight,
+                    lids,
+                    tables,
                     recalled,
-                    lanes,
+                    at,
                     samples,
                     far,
                     steps,
                     link,
                 )
-                losses(narrow, lanes, link)
-                spherical = t > course.spherical_t and may_meet_sphere(
-                    narrow, lanes, samples, steps, mast, link
-                )
-                for lane in range(lanes):
+                losses(narrow, link)
+                if t > course.spherical_t and may_meet_sphere(narrow, samples, steps, mast, link):
+                    for lane in range(INTERVALS):  # bounds do without it
+                        top = depth[lane] - 1
+                        if top < 0 or low[lane, top] < high[lane, top]:
+                            narrow[SPHERE + lane] = f4(0.0)
+                    add_excess_over_sphere(
+                        narrow, bent_ground, lids, at, samples, far, t, steps, mast, link
+                    )
+                for lane in range(INTERVALS):
                     if depth[lane] == 0:
                         continue
                     top = depth[lane] - 1
                     bottom_step, top_step = low[lane, top], high[lane, top]
                     single = bottom_step == top_step
-                    if single and spherical and narrow[SPHERE + lane] > f4(0.0):
-                        narrow[LOSS + lane] += excess_over_sphere_db(
-                            narrow, bent_ground, block_lid, lane, samples, far, t, steps, mast, link
-                        )
                     loss = narrow[LOSS + lane]
                     # A stretch is not dropped for what rounding may have done.
                     slack = f4(0.0) if single else ROUNDING
@@ -274,7 +272,7 @@ def walk_heights(
                     passes = passes and f4(aim.peak_db) - loss >= -slack
                     if passes:
                         ahead = f4(wedge.forward * mast.cell_m * t)
-                        across = f4(wide[ACROSS + lane] * mast.cell_m)
+                        across = f4(slopes[ACROSS + lane] * mast.cell_m)
                         east = ahead if wedge.along_rows else across
                         north = -across if wedge.along_rows else -ahead
                         per_metre = narrow[PER_METRE + lane]
@@ -328,8 +326,7 @@ def walk_heights(
                         narrow[WANTED + lane] = f4(0.0)
                         active -= 1
         taken = sample_line(
-            narrow,
-            place,
+            slopes,
             bent_ground,
             surface,
             flat_ground,

@@ -11,7 +11,6 @@ compiled code is kept on disk under the processor's features.
 """
 
 from collections.abc import Callable
-from types import FunctionType
 from typing import Any
 
 import llvmlite.binding
@@ -44,39 +43,6 @@ inlined = njit(**_OPTIONS, forceinline=True)
 # constants to the compiler.
 pasted = njit(**_OPTIONS, inline="always")
 parallel = njit(**_OPTIONS, parallel=True)
-
-
-_SINGLE: dict[Any, Any] = {}
-
-
-def in_single_precision(function: Any, written: Any = None) -> Any:
-    """The same inlined formula in float32, made from its source: numbers in it become float32.
-
-    numba takes a number in a source for a float64, and float32 times float64 is float64: a formula
-    that is written once would never run in float32 lanes. Formulas that it calls are turned alike;
-    for one that works on the bits of its argument give a version ``written`` for float32.
-    """
-    if function not in _SINGLE:
-        _SINGLE[function] = _turned(function.py_func) if written is None else written
-    return _SINGLE[function]
-
-
-def _turned(source: Any) -> Any:
-    code = source.__code__
-    constants = tuple(np.float32(c) if isinstance(c, float) else c for c in code.co_consts)
-    names = dict(source.__globals__)
-    for name in code.co_names:
-        value = names.get(name)
-        if isinstance(value, float):
-            names[name] = np.float32(value)
-        elif hasattr(value, "py_func"):
-            names[name] = in_single_precision(value)
-    # Compiled code is kept on disk under the function's name.
-    name = f"{source.__name__}_in_single_precision"
-    turned = FunctionType(code.replace(co_consts=constants, co_name=name), names, name)
-    turned.__qualname__ = name
-    turned.__module__ = source.__module__
-    return inlined(turned)
 
 
 def over_arrays(scalar_function: Any) -> Callable[..., Any]:

@@ -6,6 +6,7 @@ from typing import Any
 from numpy.typing import ArrayLike
 
 from planner.physics._jit import inlined, over_arrays
+from planner.physics._lanes import where
 from planner.physics.elementary import log10
 from planner.units import SPEED_OF_LIGHT_M_S
 
@@ -16,12 +17,11 @@ def wavelength_m_scalar(frequency_mhz: float) -> float:
 
 
 @inlined
-def free_space_loss_db_scalar(distance_m: float, frequency_mhz: float) -> float:
-    if not distance_m > 0.0:
-        return math.nan
+def free_space_loss_db_scalar(distance_m: Any, frequency_mhz: float) -> Any:
     # Two logarithms: in a loop over distances the second is taken once.
     per_metre = 4.0 * math.pi / wavelength_m_scalar(frequency_mhz)
-    return 20.0 * log10(distance_m) + 20.0 * log10(per_metre)
+    loss = 20.0 * log10(distance_m) + 20.0 * log10(per_metre)
+    return where(distance_m > 0.0, loss, math.nan)
 
 
 _free_space_loss_db = over_arrays(free_space_loss_db_scalar)

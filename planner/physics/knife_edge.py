@@ -6,17 +6,17 @@ from typing import Any
 from numpy.typing import ArrayLike
 
 from planner.physics._jit import inlined, over_arrays
+from planner.physics._lanes import where
 from planner.physics.elementary import log10
 
 LOWEST_NU = -0.78  # below it the approximation's loss is 0; ITU-R P.526-15, equation (31)
 
 
 @inlined
-def knife_edge_loss_db_scalar(nu: float) -> float:
-    if nu <= LOWEST_NU:
-        return 0.0
+def knife_edge_loss_db_scalar(nu: Any) -> Any:
     shifted = nu - 0.1
-    return 6.9 + 20.0 * log10(math.sqrt(shifted * shifted + 1.0) + shifted)
+    loss = 6.9 + 20.0 * log10(math.sqrt(shifted * shifted + 1.0) + shifted)
+    return where(nu <= LOWEST_NU, 0.0, loss)
 
 
 _knife_edge_loss_db = over_arrays(knife_edge_loss_db_scalar)

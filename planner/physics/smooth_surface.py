@@ -9,6 +9,7 @@ import math
 from numpy.typing import NDArray
 
 from planner.physics._jit import inlined, scalar
+from planner.physics._lanes import where
 
 
 @inlined
@@ -43,10 +44,11 @@ def smooth_surface_ends(
     """
     tx_surface = (2.0 * v1 * distance_m - v2) / (distance_m * distance_m)
     rx_surface = (v2 - v1 * distance_m) / (distance_m * distance_m)
-    if highest_obstruction_m > 0.0:
-        both = tx_obstruction_slope + rx_obstruction_slope
-        tx_surface -= highest_obstruction_m * tx_obstruction_slope / both
-        rx_surface -= highest_obstruction_m * rx_obstruction_slope / both
+    both = tx_obstruction_slope + rx_obstruction_slope
+    obstructed = highest_obstruction_m > 0.0
+    share = where(obstructed, highest_obstruction_m / both, 0.0)
+    tx_surface -= where(obstructed, share * tx_obstruction_slope, 0.0)
+    rx_surface -= where(obstructed, share * rx_obstruction_slope, 0.0)
     return min(tx_surface, tx_ground_m), min(rx_surface, rx_ground_m)
 
 

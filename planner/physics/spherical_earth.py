@@ -8,10 +8,14 @@ Section and equation numbers are from memory; tests hold the results to publishe
 import math
 
 from planner.physics._jit import inlined, scalar
+from planner.physics._lanes import where
+from planner.physics.elementary import arcsine, log10, power, sine_of_small
 
 # Electrical constants of the ground, ITU-R P.1812-7 section 4.3.3 (relative permittivity, S/m).
 LAND_PERMITTIVITY, LAND_CONDUCTIVITY_S_M = 22.0, 0.003
 SEA_PERMITTIVITY, SEA_CONDUCTIVITY_S_M = 80.0, 5.0
+
+TINY = 1e-30  # below any argument that counts; a logarithm is asked for it only to be left out
 
 # Clearance without loss over sqrt(wavelength d1 d2 / d), all in metres: 0.552 of a Fresnel radius.
 # P.526-15 section 3.2 gives 17.456 with distances in km.
@@ -22,11 +26,9 @@ REQUIRED_CLEARANCE = 17.456 / math.sqrt(1000.0)
 def _height_gain_db(scaled_height: float, beta: float, normalised_admittance: float) -> float:
     """G(Y) of P.526-15 equations (18) and (18a), with its lower limit."""
     b = beta * scaled_height
-    if b > 2.0:
-        gain = 17.6 * math.sqrt(b - 1.1) - 5.0 * math.log10(b - 1.1) - 8.0
-    else:
-        gain = 20.0 * math.log10(b + 0.1 * b * b * b)
-    return max(gain, 2.0 + 20.0 * math.log10(normalised_admittance))
+    high = 17.6 * math.sqrt(max(b - 1.1, 0.0)) - 5.0 * log10(max(b - 1.1, TINY)) - 8.0
+    low = 20.0 * log10(max(b + 0.1 * b * b * b, TINY))
+    return max(where(b > 2.0, high, low), 2.0 + 20.0 * log10(normalised_admittance))
 
 
 @scalar
@@ -44,7 +46,7 @@ def _first_term_loss_db(
     loss_term = (18.0 * conductivity_s_m / frequency_ghz) ** 2
     admittance = (
         0.036
-        * (radius_km * frequency_ghz) ** (-1.0 / 3.0)
+        * power(radius_km * frequency_ghz, -1.0 / 3.0)
         * ((permittivity - 1.0) ** 2 + loss_term) ** -0.25
     )
     if vertical:
@@ -52,12 +54,12 @@ def _first_term_loss_db(
     k2 = admittance * admittance
     k4 = k2 * k2
     beta = (1.0 + 1.6 * k2 + 0.67 * k4) / (1.0 + 4.5 * k2 + 1.53 * k4)
-    x = 21.88 * beta * (frequency_ghz / radius_km**2) ** (1.0 / 3.0) * distance_km
-    height_scale = 0.9575 * beta * (frequency_ghz**2 / radius_km) ** (1.0 / 3.0)
-    if x >= 1.6:
-        distance_term = 11.0 + 10.0 * math.log10(x) - 17.6 * x
-    else:
-        distance_term = -20.0 * math.log10(x) - 5.6488 * x**1.425
+    cube_root = power(frequency_ghz / (radius_km * radius_km), 1.0 / 3.0)
+    x = 21.88 * beta * cube_root * distance_km
+    height_scale = 0.9575 * beta * power(frequency_ghz * frequency_ghz / radius_km, 1.0 / 3.0)
+    far = 11.0 + 10.0 * log10(x) - 17.6 * x
+    near = -20.0 * log10(x) - 5.6488 * power(x, 1.425)
+    distance_term = where(x >= 1.6, far, near)
     return (
         -distance_term
         - _height_gain_db(height_scale * tx_height_m, beta, admittance)
@@ -76,30 +78,29 @@ def _first_term_mixed_loss_db(
     sea_fraction: float,
 ) -> float:
     """First term over land and sea, mixed by the share of sea; P.1812-7 equation (29)."""
-    loss = 0.0
-    if sea_fraction < 1.0:
-        loss += (1.0 - sea_fraction) * _first_term_loss_db(
-            distance_km,
-            tx_height_m,
-            rx_height_m,
-            radius_km,
-            frequency_ghz,
-            vertical,
-            LAND_PERMITTIVITY,
-            LAND_CONDUCTIVITY_S_M,
-        )
-    if sea_fraction > 0.0:
-        loss += sea_fraction * _first_term_loss_db(
-            distance_km,
-            tx_height_m,
-            rx_height_m,
-            radius_km,
-            frequency_ghz,
-            vertical,
-            SEA_PERMITTIVITY,
-            SEA_CONDUCTIVITY_S_M,
-        )
-    return loss
+    land = _first_term_loss_db(
+        distance_km,
+        tx_height_m,
+        rx_height_m,
+        radius_km,
+        frequency_ghz,
+        vertical,
+        LAND_PERMITTIVITY,
+        LAND_CONDUCTIVITY_S_M,
+    )
+    if sea_fraction <= 0.0:
+        return land
+    sea = _first_term_loss_db(
+        distance_km,
+        tx_height_m,
+        rx_height_m,
+        radius_km,
+        frequency_ghz,
+        vertical,
+        SEA_PERMITTIVITY,
+        SEA_CONDUCTIVITY_S_M,
+    )
+    return (1.0 - sea_fraction) * land + sea_fraction * sea
 
 
 @scalar
@@ -114,16 +115,12 @@ def nearest_clearance_m_scalar(
     heights = tx_height_m + rx_height_m
     c = (tx_height_m - rx_height_m) / heights
     m = distance_m * distance_m / (4.0 * earth_radius_m * heights)
-    if m < 1e-12:  # a few centimetres: the root below would be lost in rounding, its limit is c
-        b = c
-    else:
-        # At most 1 in exact arithmetic, reached when one height vanishes; rounding may pass it.
-        cosine = min(max(1.5 * c * math.sqrt(3.0 * m / (m + 1.0) ** 3), -1.0), 1.0)
-        b = (
-            2.0
-            * math.sqrt((m + 1.0) / (3.0 * m))
-            * math.cos(math.pi / 3.0 + math.acos(cosine) / 3.0)
-        )
+    # At most 1 in exact arithmetic, reached when one height vanishes; rounding may pass it.
+    q = min(max(1.5 * c * math.sqrt(3.0 * m / ((m + 1.0) * (m + 1.0) * (m + 1.0))), -1.0), 1.0)
+    # cos(pi / 3 + acos(q) / 3), without the difference of numbers close to each other.
+    cosine = sine_of_small(arcsine(q) * (1.0 / 3.0))
+    # Over a few centimetres the root would be lost in rounding; its limit is c.
+    b = where(m < 1e-12, c, 2.0 * math.sqrt((m + 1.0) / (3.0 * m)) * cosine)
     d1 = 0.5 * distance_m * (1.0 + b)
     d2 = distance_m - d1
     clearance = (
@@ -154,27 +151,29 @@ def spherical_earth_loss_db_scalar(
     horizon = math.sqrt(2.0 * radius) * (
         math.sqrt(0.001 * tx_height_m) + math.sqrt(0.001 * rx_height_m)
     )
-    if d >= horizon:
-        return _first_term_mixed_loss_db(
-            d, tx_height_m, rx_height_m, radius, f, vertical, sea_fraction
-        )
-    # Within the horizon: the less the ray clears the sphere, the more of the first term counts.
+    beyond = d >= horizon
+    # Within the horizon a smaller earth counts whose horizon is just at this distance, and the
+    # less the ray clears the sphere, the more of its first term.
+    heights = math.sqrt(tx_height_m) + math.sqrt(rx_height_m)
+    modified_radius = 500.0 * (d / heights) * (d / heights)
+    loss = _first_term_mixed_loss_db(
+        d,
+        tx_height_m,
+        rx_height_m,
+        where(beyond, radius, modified_radius),
+        f,
+        vertical,
+        sea_fraction,
+    )
     point_m, clearance = nearest_clearance_m_scalar(
         distance_m, tx_height_m, rx_height_m, earth_radius_m
     )
-    d1 = point_m / 1000.0
-    d2 = d - d1
-    required = REQUIRED_CLEARANCE * math.sqrt(1000.0 * d1 * d2 * wavelength_m / d)
-    if clearance > required:
-        return 0.0
-    # A smaller earth whose horizon is just at this distance.
-    modified_radius = 500.0 * (d / (math.sqrt(tx_height_m) + math.sqrt(rx_height_m))) ** 2
-    loss = _first_term_mixed_loss_db(
-        d, tx_height_m, rx_height_m, modified_radius, f, vertical, sea_fraction
+    rest_m = distance_m - point_m
+    required = REQUIRED_CLEARANCE * math.sqrt(point_m * rest_m * wavelength_m / distance_m)
+    within = where(
+        clearance > required, 0.0, (1.0 - clearance / required) * where(loss < 0.0, 0.0, loss)
     )
-    if loss < 0.0:
-        return 0.0
-    return (1.0 - clearance / required) * loss
+    return where(beyond, loss, within)
 
 
 @inlined

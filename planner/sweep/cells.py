@@ -1,17 +1,20 @@
 """Path loss, angle of departure and clearance of the cells of one line under a fan."""
 
 import math
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.physics._jit import in_single_precision, scalar
+from planner.physics._jit import inlined, scalar
+from planner.physics._lanes import any_lane, load, store, where
 from planner.physics.bullington import bullington_loss_db_scalar, bullington_point_nu_scalar
 from planner.physics.elementary import arctangent
 from planner.physics.free_space import free_space_loss_db_scalar
 from planner.physics.smooth_surface import fit_increments, smooth_surface_ends
 from planner.physics.spherical_earth import clears_sphere_scalar
 from planner.sweep.own_line import FREE
+from planner.sweep.sampling_lines import between
 from planner.sweep.state import (
     BEST_NEAR,
     BEST_TANGENT,
@@ -23,6 +26,7 @@ from planner.sweep.state import (
     DISTANCE,
     ELEVATION,
     GROUND,
+    INTERVALS,
     LAST_GROUND,
     LEAST_DISTANCE_M,
     LOSS,
@@ -32,10 +36,9 @@ from planner.sweep.state import (
     PER_METRE,
     RATIO,
     RX_ABOVE,
-    RX_EFFECTIVE,
+    SHARE_OF_NEXT,
     SPHERE,
     SUM,
-    TX_EFFECTIVE,
     TX_SLOPE,
     V1,
     V2,
@@ -46,89 +49,83 @@ from planner.sweep.state import (
 )
 
 f4 = np.float32
-DEGREES = f4(180.0 / math.pi)
-_arctangent = in_single_precision(arctangent)
-_bullington_loss_db = in_single_precision(bullington_loss_db_scalar)
-_bullington_point_nu = in_single_precision(bullington_point_nu_scalar)
-_free_space_loss_db = in_single_precision(free_space_loss_db_scalar)
-_fit_increments = in_single_precision(fit_increments)
-_smooth_surface_ends = in_single_precision(smooth_surface_ends)
-_clears_sphere = in_single_precision(clears_sphere_scalar)
+DEGREES = 180.0 / math.pi
 
 
 @scalar
-def losses(narrow: NDArray, lanes: int, link: Link) -> None:
+def losses(narrow: NDArray, link: Link) -> None:
     """Path loss, angle and clearance of each lane's cell but for the spherical earth."""
     bend = f4(1.0 / (2.0 * link.earth_radius_m))
-    wavelength, frequency = f4(link.wavelength_m), f4(link.frequency_mhz)
-    for lane in range(lanes):
-        distance = narrow[DISTANCE + lane]
-        rx_height = narrow[GROUND + lane] + narrow[RX_ABOVE + lane]
-        per_metre = narrow[PER_METRE + lane]
-        blocked = narrow[TX_SLOPE + lane] >= narrow[DIRECT + lane]
-        tx_slope = narrow[TX_SLOPE + lane] * per_metre
-        rx_slope = narrow[BEST_TANGENT + lane] * per_metre
-        direct = narrow[DIRECT + lane] * per_metre
-        near_nu = narrow[BEST_NEAR + lane] * narrow[NU_SCALE + lane]
-        edge_nu = _bullington_point_nu(
-            tx_slope + distance * bend,
-            rx_slope - distance * bend,
-            f4(0.0),
-            rx_height,
-            distance,
-            wavelength,
-        )
-        # Where a ray only just touches, rounding may leave the edge's height negative or NaN.
-        edge_nu = edge_nu if edge_nu > f4(0.0) else f4(0.0)
-        actual = _bullington_loss_db(edge_nu if blocked else near_nu, distance)
-        slant = np.sqrt(distance * distance + rx_height * rx_height)
-        loss = f4(_free_space_loss_db(slant, frequency)) + actual
-        narrow[LOSS + lane] = loss if slant >= f4(LEAST_DISTANCE_M) else f4(np.nan)
-        narrow[ELEVATION + lane] = _arctangent(tx_slope if blocked else direct) * DEGREES
-        narrow[RATIO + lane] = min(near_nu * f4(1.0 / FREE), f4(1.0))
+    distance = load(narrow, DISTANCE)
+    rx_height = load(narrow, GROUND) + load(narrow, RX_ABOVE)
+    per_metre = load(narrow, PER_METRE)
+    highest, ray = load(narrow, TX_SLOPE), load(narrow, DIRECT)
+    blocked = highest >= ray
+    tx_slope = highest * per_metre
+    rx_slope = load(narrow, BEST_TANGENT) * per_metre
+    near_nu = load(narrow, BEST_NEAR) * load(narrow, NU_SCALE)
+    edge_nu = bullington_point_nu_scalar(
+        tx_slope + distance * bend,
+        rx_slope - distance * bend,
+        0.0,
+        rx_height,
+        distance,
+        link.wavelength_m,
+    )
+    # Where a ray only just touches, rounding may leave the edge's height negative or NaN.
+    edge_nu = max(edge_nu, 0.0)
+    actual = bullington_loss_db_scalar(where(blocked, edge_nu, near_nu), distance)
+    slant = math.sqrt(distance * distance + rx_height * rx_height)
+    loss = free_space_loss_db_scalar(slant, link.frequency_mhz) + actual
+    store(narrow, LOSS, where(slant >= LEAST_DISTANCE_M, loss, math.nan))
+    elevation = arctangent(where(blocked, tx_slope, ray * per_metre))
+    store(narrow, ELEVATION, elevation * DEGREES)
+    store(narrow, RATIO, min(near_nu * (1.0 / FREE), 1.0))
 
 
 @scalar
-def may_meet_sphere(
-    narrow: NDArray, lanes: int, samples: int, steps: float, mast: Mast, link: Link
-) -> bool:
-    """Effective heights of each lane's path; whether the spherical earth may add to some loss."""
+def may_meet_sphere(narrow: NDArray, samples: int, steps: float, mast: Mast, link: Link) -> bool:
+    """Whether the spherical earth may add to some lane's loss; V1, V2 and SPHERE of each."""
     tx_ground = f4(mast.ground_m - link.tx_height_m)
-    earth_radius, wavelength = f4(link.earth_radius_m), f4(link.wavelength_m)
-    u, last_step = f4(steps), f4(samples)
-    two, six, none = f4(2.0), f4(6.0), f4(0.0)
-    last_weight = f4(3.0 * samples + 1.0)
-    some = False
-    for lane in range(lanes):
-        ground = narrow[GROUND + lane]
-        last = narrow[LAST_GROUND + lane]
-        # Sums over the samples, a step apart, by parts: every height but the ends stands twice.
-        v1 = two * narrow[SUM + lane] + tx_ground - last
-        v2 = six * narrow[MOMENT + lane] + tx_ground - last * last_weight
-        part1, part2 = _fit_increments(u, ground, last_step, last)
-        tx_surface, rx_surface = _smooth_surface_ends(
-            v1 + part1, v2 + part2, u, none, none, none, tx_ground, ground
-        )
-        tx_effective = -tx_surface
-        rx_effective = ground + narrow[RX_ABOVE + lane] - rx_surface
-        clears = _clears_sphere(
-            narrow[DISTANCE + lane], tx_effective, rx_effective, earth_radius, wavelength
-        )
-        wanted = (narrow[WANTED + lane] > none) & (narrow[CELL_HOLES + lane] == none)
-        narrow[V1 + lane] = v1 + part1
-        narrow[V2 + lane] = v2 + part2
-        narrow[TX_EFFECTIVE + lane] = tx_effective
-        narrow[RX_EFFECTIVE + lane] = rx_effective
-        narrow[SPHERE + lane] = f4(1.0) if wanted & (not clears) else none
-        some = some | (wanted & (not clears))
-    return some
+    ground = load(narrow, GROUND)
+    share = load(narrow, SHARE_OF_NEXT)
+    last = _of_cell(narrow, LAST_GROUND, share)
+    # Sums over the samples, a step apart, by parts: every height but the ends stands twice.
+    v1 = 2.0 * _of_cell(narrow, SUM, share) + tx_ground - last
+    v2 = 6.0 * _of_cell(narrow, MOMENT, share) + tx_ground - last * f4(3.0 * samples + 1.0)
+    part1, part2 = fit_increments(f4(steps), ground, f4(samples), last)
+    v1, v2 = v1 + part1, v2 + part2
+    tx_surface, rx_surface = smooth_surface_ends(
+        v1, v2, f4(steps), 0.0, 0.0, 0.0, tx_ground, ground
+    )
+    tx_effective = -tx_surface
+    rx_effective = ground + load(narrow, RX_ABOVE) - rx_surface
+    clears = clears_sphere_scalar(
+        load(narrow, DISTANCE),
+        tx_effective,
+        rx_effective,
+        link.earth_radius_m,
+        link.wavelength_m,
+    )
+    wanted = (load(narrow, WANTED) > 0.0) & (load(narrow, CELL_HOLES) == 0.0)
+    store(narrow, V1, v1)
+    store(narrow, V2, v2)
+    meets = wanted & ~clears
+    store(narrow, SPHERE, where(meets, 1.0, 0.0))
+    return any_lane(meets)
+
+
+@inlined
+def _of_cell(narrow: NDArray, row: int, share: Any) -> Any:
+    """What both radials beside the cell know, where one may be NaN for a hole."""
+    one, other = load(narrow, row), load(narrow, row + 1)
+    return where(share <= 0.0, one, where(share >= 1.0, other, between(one, other, share)))
 
 
 @scalar
 def write_cells(
     narrow: NDArray,
     place: NDArray,
-    lanes: int,
     wedge: Wedge,
     line: int,
     mast: Mast,
@@ -138,7 +135,7 @@ def write_cells(
     status: NDArray,
 ) -> None:
     """Put the results of a line into the layers."""
-    for lane in range(lanes):
+    for lane in range(INTERVALS):
         if narrow[WANTED + lane] == f4(0.0):
             continue
         row = (place[CELL + lane] if wedge.along_rows else line) - mast.row_start

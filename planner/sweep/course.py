@@ -11,6 +11,7 @@ from planner.physics.spherical_earth import clears_sphere_scalar
 from planner.sweep.state import (
     BLOCK,
     GROUP,
+    INTERVALS,
     LANES,
     NARROW_ROWS,
     OWN_SAMPLES,
@@ -22,6 +23,7 @@ from planner.sweep.state import (
     Fan,
     Link,
     Mast,
+    Tables,
     Wedge,
 )
 
@@ -37,7 +39,7 @@ def fans(reach: int) -> list[tuple[int, int, int, int]]:
         inner = outer // 2 if outer > LEAST_RING else 0
         last = _last_radial(outer)
         for wedge in (EAST, WEST, NORTH, SOUTH):
-            for first in range(-last, last + 1, LANES):
+            for first in range(-last, last, INTERVALS):
                 units.append((wedge, outer, first, inner))
         outer = inner
     return units
@@ -46,7 +48,17 @@ def fans(reach: int) -> list[tuple[int, int, int, int]]:
 @scalar
 def _last_radial(outer: int) -> int:
     """Number of the first radial that passes beyond the wedge's diagonal."""
-    return math.ceil(math.asinh(1.0) * outer / SPACING)
+    return math.ceil(math.asinh(1.0) / angle_between(outer))
+
+
+@scalar
+def angle_between(outer: int) -> float:
+    """Hyperbolic angle from radial to radial; radial r of a ring moves sinh(r * angle) a line.
+
+    SPACING cells apart at its outer circle, and a little within, so that no two cells of the ring
+    are ever between the same two radials.
+    """
+    return SPACING / (outer + 1.0)
 
 
 @scalar
@@ -101,7 +113,7 @@ def _spherical_from_m(mast: Mast, link: Link) -> float:
 class Course(NamedTuple):
     """What a fan's walk keeps in mind; t counts lines from the mast, steps count cells' widths."""
 
-    lanes: int
+    last_lane: int  # of the radials that there are
     stretch: float  # steps per line, along the lane in the middle
     first_t: float  # lines with cells of the ring lie between these
     last_t: float
@@ -114,11 +126,12 @@ class Course(NamedTuple):
 def course_of(
     outer: int, first_radial: int, inner: int, has_obstacles: bool, mast: Mast, link: Link
 ) -> Course:
-    """The course of one fan; cosh(r * SPACING / outer) is the length of radial r per line."""
-    lanes = min(LANES, _last_radial(outer) - first_radial + 1)
-    last_radial = first_radial + lanes - 1
-    flattest = max(first_radial, -last_radial, 0) * SPACING / outer
-    steepest = max(abs(first_radial), abs(last_radial)) * SPACING / outer
+    """The course of one fan; radial r is cosh(r * angle) long per line."""
+    last_lane = min(INTERVALS, _last_radial(outer) - first_radial)
+    last_radial = first_radial + last_lane
+    angle = angle_between(outer)
+    flattest = max(first_radial, -last_radial, 0) * angle
+    steepest = max(abs(first_radial), abs(last_radial)) * angle
     # The scale changes little over a window; 1 % more than the radius is more than enough.
     in_range = link.radius_m * mast.scale * 1.01 / mast.cell_m + 1.0
     clearing_steps = 0.0
@@ -126,8 +139,8 @@ def course_of(
         clearing_steps = link.obstacle_clearing_m * mast.scale * 1.01 / mast.cell_m * 1.42 + 1.0
     spherical_cells = _spherical_from_m(mast, link) * mast.scale * 0.99 / mast.cell_m
     return Course(
-        lanes,
-        math.cosh((first_radial + 0.5 * (lanes - 1)) * SPACING / outer),
+        last_lane,
+        math.cosh((first_radial + 0.5 * last_lane) * angle),
         inner / math.cosh(steepest) - 1.0,
         min(outer / math.cosh(flattest) + 1.0, in_range / math.cosh(flattest)),
         link.obstacle_clearing_m * link.obstacle_clearing_m / (2.0 * link.earth_radius_m),
@@ -146,30 +159,44 @@ def samples_before(steps: float, has_obstacles: bool, clearing_steps: float) -> 
 
 
 @scalar
+def _most_samples(outer: int) -> int:
+    """As many samples as a radial of a ring may have, in whole blocks and a vector more."""
+    return (outer // BLOCK + 3) * BLOCK + LANES
+
+
+@scalar
+def tables_of(outer: int) -> Tables:
+    """Where in the fans of a ring things begin."""
+    samples = _most_samples(outer)
+    blocks = samples // BLOCK + LANES  # a vector more, here too
+    group_lids = 2 * LANES * blocks
+    region_lids = group_lids + 2 * LANES * (blocks // GROUP + 1)
+    return Tables(group_lids, region_lids, samples, samples + blocks, samples + 2 * blocks)
+
+
+@scalar
 def new_fan(outer: int, has_obstacles: bool) -> Fan:
     """Working arrays for the fans of a ring."""
-    size = (outer // BLOCK + 3) * BLOCK  # samples: one for each cell's width out to the circle
-    blocks = size // BLOCK + 1
-    bent_ground = np.empty((size, LANES), dtype=np.float32)
-    bent_surface = bent_ground
+    at = tables_of(outer)
+    samples = _most_samples(outer)
+    blocks = at.edge_steepness - at.block_roots
+    ground = np.empty(LANES * samples, dtype=np.float32)
+    surface = ground
     if has_obstacles:
-        bent_surface = np.empty((size, LANES), dtype=np.float32)
-    root_steepness = np.empty(size, dtype=np.float32)
-    for i in range(size):
-        root_steepness[i] = 1.0 / math.sqrt(i + 1.0)
+        surface = np.empty(LANES * samples, dtype=np.float32)
+    lids = np.empty(at.region_lids + 2 * LANES * (blocks // REGION + 2), dtype=np.float32)
+    tables = np.empty(at.edge_weight + blocks, dtype=np.float32)
+    for i in range(samples):
+        tables[i] = 1.0 / math.sqrt(i + 1.0)
+    for block in range(blocks):
+        tables[at.block_roots + block] = 1.0 / math.sqrt(block * BLOCK + 1.0)
     return Fan(
-        np.empty(NARROW_ROWS * LANES, dtype=np.float32),
-        np.empty(WIDE_ROWS * LANES, dtype=np.float64),
-        np.empty(PLACES, dtype=np.int64),
-        bent_ground,
-        bent_surface,
-        np.empty((2 * blocks, LANES), dtype=np.float32),
-        np.empty((2 * (blocks // GROUP + 1), LANES), dtype=np.float32),
-        np.empty((2 * (blocks // REGION + 1), LANES), dtype=np.float32),
-        np.empty(blocks, dtype=np.float32),
-        np.empty(blocks, dtype=np.float32),
-        root_steepness,
-        np.empty(BLOCK, dtype=np.float32),
-        np.empty(BLOCK, dtype=np.float32),
-        np.empty(1 + 2 * RECALLED, dtype=np.int64),
+        np.zeros(NARROW_ROWS * LANES, dtype=np.float32),
+        np.zeros(WIDE_ROWS * LANES, dtype=np.float64),
+        np.zeros(PLACES, dtype=np.int32),
+        ground,
+        surface,
+        lids,
+        tables,
+        np.zeros(1 + 2 * RECALLED, dtype=np.int64),
     )

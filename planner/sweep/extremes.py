@@ -9,7 +9,8 @@ so all lanes share it. With u steps from mast to cell, sample i at step i + 1 an
     nu:       (height - slope * (i + 1)) / sqrt((i + 1) * k)   times sqrt(2 u^2 / (wavelength * d))
 
 A block of samples cannot beat what was found already where a straight lid over its points does not:
-most blocks are passed over, and the result is the same.
+most blocks are passed over, and the result is the same. Heights and lids of a cell lie in
+proportion between those of the two radials beside it.
 """
 
 import math
@@ -17,17 +18,21 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.physics._jit import scalar
+from planner.physics._jit import inlined, scalar
+from planner.physics._lanes import LANES, any_lane, lane_numbers, load, single, store
 from planner.sweep.state import (
     BEST_NEAR,
     BEST_TANGENT,
     BLOCK,
     DIRECT,
     GROUP,
-    LANES,
     RECALLED,
     REGION,
+    ROW_STEEPNESS,
+    ROW_WEIGHT,
     RX_BENT,
+    SHARE_OF_NEXT,
+    Tables,
 )
 
 f4 = np.float32
@@ -35,158 +40,84 @@ f4 = np.float32
 
 @scalar
 def scan(
-    narrow: NDArray,
-    flat_surface: NDArray,
-    root: NDArray,
-    row_steepness: NDArray,
-    row_weight: NDArray,
-    lanes: int,
-    low: int,
-    high: int,
-    steps: float,
+    narrow: NDArray, surface: NDArray, tables: NDArray, low: int, high: int, steps: float
 ) -> bool:
     """Let the samples from ``low`` up to ``high`` compete; whether any lane found a better one.
 
-    Four at a time, so a multiple of four. ``flat_surface`` is the surface in one dimension: with
-    one base for all four rows, indices that cannot be negative and offsets known to the compiler,
-    next to nothing is checked at run time.
+    LANES samples at most.
     """
+    steepness = 1.0 / (f4(steps - (low + 1.0)) - single(lane_numbers()))
+    store(narrow, ROW_STEEPNESS, steepness)
+    store(narrow, ROW_WEIGHT, load(tables, low) * math.sqrt(steepness))
+    next_share = load(narrow, SHARE_OF_NEXT)
+    share = 1.0 - next_share
+    rx, direct = load(narrow, RX_BENT), load(narrow, DIRECT)
+    old_tangent, old_near = load(narrow, BEST_TANGENT), load(narrow, BEST_NEAR)
+    tangent, near = old_tangent, old_near
+    ray = direct * f4(low + 1.0)
     for i in range(low, high):
-        row_steepness[i - low] = f4(1.0) / f4(steps - (i + 1.0))
-    for i in range(low, high):
-        row_weight[i - low] = root[i] * np.sqrt(row_steepness[i - low])
-    rose = False
-    for i in range(low, high, 4):
-        at = np.uint64(i * LANES)
-        row = i - low
-        s0, s1, s2, s3 = (
-            row_steepness[row],
-            row_steepness[row + 1],
-            row_steepness[row + 2],
-            row_steepness[row + 3],
-        )
-        w0, w1, w2, w3 = (
-            row_weight[row],
-            row_weight[row + 1],
-            row_weight[row + 2],
-            row_weight[row + 3],
-        )
-        p0, p1, p2, p3 = f4(i + 1.0), f4(i + 2.0), f4(i + 3.0), f4(i + 4.0)
-        for lane in range(lanes):
-            h0 = flat_surface[at + np.uint64(lane)]
-            h1 = flat_surface[at + np.uint64(LANES) + np.uint64(lane)]
-            h2 = flat_surface[at + np.uint64(2 * LANES) + np.uint64(lane)]
-            h3 = flat_surface[at + np.uint64(3 * LANES) + np.uint64(lane)]
-            rx = narrow[RX_BENT + lane]
-            slope = narrow[DIRECT + lane]
-            tangent = max(max((h0 - rx) * s0, (h1 - rx) * s1), max((h2 - rx) * s2, (h3 - rx) * s3))
-            near = max(
-                max((h0 - slope * p0) * w0, (h1 - slope * p1) * w1),
-                max((h2 - slope * p2) * w2, (h3 - slope * p3) * w3),
-            )
-            best_tangent = narrow[BEST_TANGENT + lane]
-            best_near = narrow[BEST_NEAR + lane]
-            rose = rose | (tangent > best_tangent) | (near > best_near)
-            narrow[BEST_TANGENT + lane] = max(tangent, best_tangent)
-            narrow[BEST_NEAR + lane] = max(near, best_near)
-    return rose
+        height = load(surface, i * LANES) * share + load(surface, i * LANES + 1) * next_share
+        tangent = max((height - rx) * narrow[ROW_STEEPNESS + i - low], tangent)
+        near = max((height - ray) * narrow[ROW_WEIGHT + i - low], near)
+        ray = ray + direct
+    store(narrow, BEST_TANGENT, tangent)
+    store(narrow, BEST_NEAR, near)
+    return any_lane((tangent > old_tangent) | (near > old_near))
 
 
 @scalar
-def scan_latest(
-    narrow: NDArray,
-    surface: NDArray,
-    flat_surface: NDArray,
-    root: NDArray,
-    row_steepness: NDArray,
-    row_weight: NDArray,
-    lanes: int,
-    low: int,
-    high: int,
-    steps: float,
-) -> None:
-    """Let the samples that fill no block compete: ``low`` (a multiple of four) up to ``high``."""
-    fours = low + (high - low) // 4 * 4
-    scan(narrow, flat_surface, root, row_steepness, row_weight, lanes, low, fours, steps)
-    if fours < high and high >= 4:  # once more some of those that were counted already
-        scan(narrow, flat_surface, root, row_steepness, row_weight, lanes, high - 4, high, steps)
-        return
-    for i in range(fours, high):
-        steepness = f4(1.0 / (steps - (i + 1.0)))
-        weight = root[i] * f4(math.sqrt(steepness))
-        place = f4(i + 1.0)
-        for lane in range(lanes):
-            height = surface[i, lane]
-            tangent = (height - narrow[RX_BENT + lane]) * steepness
-            near = (height - narrow[DIRECT + lane] * place) * weight
-            narrow[BEST_TANGENT + lane] = max(tangent, narrow[BEST_TANGENT + lane])
-            narrow[BEST_NEAR + lane] = max(near, narrow[BEST_NEAR + lane])
-
-
-@scalar
-def weigh_edges(
-    steepness: NDArray, weight: NDArray, root: NDArray, blocks: int, steps: float
-) -> None:
+def weigh_edges(tables: NDArray, at: Tables, blocks: int, steps: float) -> None:
     """Weights at the first sample of each block and of the one after the last."""
-    for block in range(blocks + 1):
-        steepness[block] = f4(1.0) / f4(steps - (block * BLOCK + 1.0))
-    for block in range(blocks + 1):
-        weight[block] = root[block * BLOCK] * np.sqrt(steepness[block])
+    for block in range(0, blocks + 1, LANES):
+        places = single(lane_numbers()) * BLOCK
+        steepness = 1.0 / (f4(steps - (block * BLOCK + 1.0)) - places)
+        store(tables, at.edge_steepness + block, steepness)
+        weight = load(tables, at.block_roots + block) * math.sqrt(steepness)
+        store(tables, at.edge_weight + block, weight)
 
 
-@scalar
+@inlined
 def may_hold_better(
     narrow: NDArray,
-    lid: NDArray,
-    steepness: NDArray,
-    weight: NDArray,
-    lanes: int,
-    row: int,
+    lids: NDArray,
+    tables: NDArray,
+    at: Tables,
+    lid: int,
     first: int,
     stop: int,
     steps: float,
 ) -> bool:
-    """Whether blocks ``first`` up to ``stop``, under the lid ``row``, may beat a lane's best.
+    """Whether blocks ``first`` up to ``stop``, under the lid at ``lid``, may beat a lane's best.
 
     Seen from the receiver a straight lid is steepest at one of its ends. A height above the ray
     counts most where the weight of nu is largest, one below where it is smallest: at an end, or
     halfway along the path.
     """
-    far, close = steepness[first], steepness[stop]
-    one, other = weight[first], weight[stop]
+    far, close = tables[at.edge_steepness + first], tables[at.edge_steepness + stop]
+    one, other = tables[at.edge_weight + first], tables[at.edge_weight + stop]
     heavy, light = max(one, other), min(one, other)
     first_step, last_step = first * BLOCK + 1.0, stop * BLOCK + 1.0
     if first_step < 0.5 * steps < last_step:
         light = f4(2.0 / steps)
-    from_step, to_step = f4(first_step), f4(last_step)
-    hit = False
-    for lane in range(lanes):
-        start = lid[2 * row, lane]
-        end = lid[2 * row + 1, lane]
-        rx = narrow[RX_BENT + lane]
-        tangent = max((start - rx) * far, (end - rx) * close)
-        slope = narrow[DIRECT + lane]
-        clear = max(start - slope * from_step, end - slope * to_step)
-        near = max(clear * heavy, clear * light)
-        hit = hit | (tangent > narrow[BEST_TANGENT + lane]) | (near > narrow[BEST_NEAR + lane])
-    return hit
+    next_share = load(narrow, SHARE_OF_NEXT)
+    share = 1.0 - next_share
+    start = load(lids, lid) * share + load(lids, lid + 1) * next_share
+    end = load(lids, lid + LANES) * share + load(lids, lid + LANES + 1) * next_share
+    rx, direct = load(narrow, RX_BENT), load(narrow, DIRECT)
+    tangent = max((start - rx) * far, (end - rx) * close)
+    clear = max(start - direct * f4(first_step), end - direct * f4(last_step))
+    near = max(clear * heavy, clear * light)
+    return any_lane((tangent > load(narrow, BEST_TANGENT)) | (near > load(narrow, BEST_NEAR)))
 
 
 @scalar
 def search(
     narrow: NDArray,
     surface: NDArray,
-    flat_surface: NDArray,
-    block_lid: NDArray,
-    group_lid: NDArray,
-    region_lid: NDArray,
-    steepness: NDArray,
-    weight: NDArray,
-    root: NDArray,
-    row_steepness: NDArray,
-    row_weight: NDArray,
+    lids: NDArray,
+    tables: NDArray,
     recalled: NDArray,
-    lanes: int,
+    at: Tables,
     samples: int,
     steps: float,
 ) -> None:
@@ -197,38 +128,17 @@ def search(
     longer holds an extreme soon comes last, raises nothing and is forgotten.
     """
     blocks = samples // BLOCK
-    scan_latest(
-        narrow,
-        surface,
-        flat_surface,
-        root,
-        row_steepness,
-        row_weight,
-        lanes,
-        blocks * BLOCK,
-        samples,
-        steps,
-    )
+    scan(narrow, surface, tables, blocks * BLOCK, samples, steps)
     known = recalled[0]
     kept = 0
     for n in range(known):
         recalled[1 + RECALLED + n] = recalled[known - n]
     for n in range(known):
         block = recalled[1 + RECALLED + n]
-        if scan(
-            narrow,
-            flat_surface,
-            root,
-            row_steepness,
-            row_weight,
-            lanes,
-            block * BLOCK,
-            (block + 1) * BLOCK,
-            steps,
-        ):
+        if scan(narrow, surface, tables, block * BLOCK, (block + 1) * BLOCK, steps):
             kept += 1
             recalled[kept] = block
-    weigh_edges(steepness, weight, root, blocks, steps)
+    weigh_edges(tables, at, blocks, steps)
     in_regions = blocks // REGION * REGION
     in_groups = blocks // GROUP * GROUP
     block = blocks - 1
@@ -236,38 +146,24 @@ def search(
         stop = block + 1
         if stop <= in_regions and stop % REGION == 0:
             first = stop - REGION
-            if not may_hold_better(
-                narrow, region_lid, steepness, weight, lanes, first // REGION, first, stop, steps
-            ):
+            lid = at.region_lids + 2 * LANES * (first // REGION)
+            if not may_hold_better(narrow, lids, tables, at, lid, first, stop, steps):
                 block -= REGION
                 continue
         if stop <= in_groups and stop % GROUP == 0:
             first = stop - GROUP
-            if not may_hold_better(
-                narrow, group_lid, steepness, weight, lanes, first // GROUP, first, stop, steps
-            ):
+            lid = at.group_lids + 2 * LANES * (first // GROUP)
+            if not may_hold_better(narrow, lids, tables, at, lid, first, stop, steps):
                 block -= GROUP
                 continue
         seen = False
         for n in range(known):
             seen = seen | (recalled[1 + RECALLED + n] == block)
-        low = block * BLOCK
+        lid = 2 * LANES * block
         if (
             not seen
-            and may_hold_better(
-                narrow, block_lid, steepness, weight, lanes, block, block, block + 1, steps
-            )
-            and scan(
-                narrow,
-                flat_surface,
-                root,
-                row_steepness,
-                row_weight,
-                lanes,
-                low,
-                low + BLOCK,
-                steps,
-            )
+            and may_hold_better(narrow, lids, tables, at, lid, block, stop, steps)
+            and scan(narrow, surface, tables, block * BLOCK, stop * BLOCK, steps)
         ):
             if kept == RECALLED:
                 for n in range(1, RECALLED):

@@ -24,7 +24,7 @@ from planner.terrain import Grid, Terrain
 
 # Part of every key. Raise it with every change after which path_field gives other numbers, or other
 # arrays, for the same input: fields that were kept before must not be used any more.
-MODEL_VERSION = 4
+MODEL_VERSION = 5
 
 _SNAP_CELLS = 1e-6  # a mast so near a cell's centre stands on it
 _BLOCK_CELLS = 2**20  # hashed at a time by one thread; part of the key's definition

@@ -1,13 +1,25 @@
 """What is a cell's own under a fan: its place, its ground, the last samples before it."""
 
 import math
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from planner.geodesy import chord_distance_m
-from planner.physics._jit import in_single_precision, pasted, scalar
-from planner.sweep.sampling_lines import crossing
+from planner.physics._jit import inlined, scalar
+from planner.physics._lanes import (
+    LANES,
+    any_lane,
+    gather,
+    lane_numbers,
+    load,
+    single,
+    store,
+    where,
+    whole,
+)
+from planner.sweep.sampling_lines import between, crossing
 from planner.sweep.state import (
     ACROSS,
     BEST_NEAR,
@@ -17,23 +29,20 @@ from planner.sweep.state import (
     CELL_HOLES,
     DIRECT,
     DISTANCE,
-    EDGE,
-    FRACTION,
     GROUND,
     GROUND_SLOPE,
     HOLES,
-    INDEX,
-    LANES,
-    NEXT_INDEX,
+    LOWEST,
     NU_SCALE,
     OWN_BENT,
-    OWN_CROSSING,
-    OWN_WOOD,
+    OWN_SAMPLES,
+    OWN_SHARE,
     PER_METRE,
     RX_ABOVE,
     RX_BENT,
-    SAMPLE_SHARE,
-    SHARE,
+    SHARE_OF_NEXT,
+    SLOPE,
+    SURFACE_AT,
     SURFACE_SLOPE,
     TX_SLOPE,
     WANTED,
@@ -43,16 +52,14 @@ from planner.sweep.state import (
 )
 
 f4 = np.float32
-_distance_m = in_single_precision(chord_distance_m)
 FREE = -math.sqrt(2.0)  # nu where the first Fresnel zone is just free
 
 
 @scalar
 def own_cells(
     narrow: NDArray,
-    wide: NDArray,
+    slopes: NDArray,
     place: NDArray,
-    lanes: int,
     t: float,
     wedge: Wedge,
     mast: Mast,
@@ -60,242 +67,189 @@ def own_cells(
     outer: int,
     radius_m: float,
 ) -> bool:
-    """Find the cell of each lane on the line at distance t; whether any has one in range.
+    """Find the cell after each radial on the line at distance t; whether any is in range.
 
-    A lane has the cell between its edges, if there is one: lanes are at most a cell apart.
+    A cell belongs to the radial at or before it and the next: radials are at most a cell apart.
     """
     ahead_east = wedge.forward * mast.cell_m * t if wedge.along_rows else 0.0
     ahead_north = 0.0 if wedge.along_rows else -wedge.forward * mast.cell_m * t
     side_east = 0.0 if wedge.along_rows else mast.cell_m
     side_north = -mast.cell_m if wedge.along_rows else 0.0
-    scale = f4(mast.scale)
-    gradient_east = f4(mast.scale_gradient_east_per_m)
-    gradient_north = f4(mast.scale_gradient_north_per_m)
-    found = False
-    for lane in range(lanes):
-        cell = place[EDGE + lane + 1] >> 32
-        across = cell - wedge.side
-        distance = _distance_m(
-            f4(ahead_east + across * side_east),
-            f4(ahead_north + across * side_north),
-            scale,
-            gradient_east,
-            gradient_north,
-        )
-        has_cell = cell != place[EDGE + lane] >> 32
-        in_window = (cell >= wedge.lateral_low) & (cell <= wedge.lateral_high)
-        # Cells on the diagonals belong to the wedges east and west.
-        in_wedge = (abs(across) < t) | ((abs(across) == t) & wedge.along_rows)
-        square = t * t + across * across
-        in_ring = (square > inner * inner) & (square <= outer * outer)
-        wanted = has_cell & in_window & in_wedge & in_ring & (distance <= radius_m)
-        place[CELL + lane] = min(max(cell, 0), wedge.lateral_last)
-        wide[ACROSS + lane] = across
-        narrow[DISTANCE + lane] = distance
-        narrow[WANTED + lane] = f4(1.0) if wanted else f4(0.0)
-        found = found | wanted
-    return found
-
-
-@scalar
-def own_lines(
-    narrow: NDArray,
-    wide: NDArray,
-    place: NDArray,
-    lanes: int,
-    t: float,
-    flat_ground: NDArray,
-    flat_obstacle: NDArray,
-    wedge: Wedge,
-    line: int,
-    mast: Mast,
-    link: Link,
-) -> None:
-    """Ground (and obstacles) where the cells' own lines to the mast cross the lines before."""
-    start = line * wedge.line_stride
-    stride = wedge.lateral_stride
-    for lane in range(lanes):
-        height = flat_ground[np.uint64(start + place[CELL + lane] * stride)]
-        narrow[OWN_CROSSING + lane] = height - f4(link.tx_height_m)
-    if flat_obstacle.size > 0:
-        for lane in range(lanes):
-            narrow[OWN_WOOD + lane] = flat_obstacle[np.uint64(start + place[CELL + lane] * stride)]
-    _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 1)
-    _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 2)
-    _own_line(narrow, wide, place, lanes, t, flat_ground, flat_obstacle, wedge, line, mast, link, 3)
-
-
-@pasted
-def _own_line(
-    narrow: NDArray,
-    wide: NDArray,
-    place: NDArray,
-    lanes: int,
-    t: float,
-    flat_ground: NDArray,
-    flat_obstacle: NDArray,
-    wedge: Wedge,
-    line: int,
-    mast: Mast,
-    link: Link,
-    back: int,
-) -> None:
-    """The same for the line ``back`` lines before."""
-    if t - back <= 0.0:  # the mast stands there
-        for lane in range(lanes):
-            narrow[OWN_CROSSING + back * LANES + lane] = mast.ground_m - link.tx_height_m
-            narrow[OWN_WOOD + back * LANES + lane] = 0.0
-        return
-    part = (t - back) / t
-    last = float(wedge.lateral_last)
-    for lane in range(lanes):
-        at = min(max(wedge.side + part * wide[ACROSS + lane], 0.0), last)
-        i = int(at)
-        place[INDEX + lane] = i
-        place[NEXT_INDEX + lane] = min(i + 1, wedge.lateral_last)
-        narrow[FRACTION + lane] = f4(at - i)
-    back_line = line - back * wedge.forward
-    crossing(
-        narrow,
-        place,
-        lanes,
-        flat_ground,
-        wedge,
-        back_line,
-        link.tx_height_m,
-        OWN_CROSSING + back * LANES,
+    here = load(slopes, SLOPE) * t + wedge.side
+    there = load(slopes, SLOPE + 1) * t + wedge.side
+    number = math.floor(there)
+    has_cell = number > math.floor(here)
+    across = number - wedge.side
+    narrow_across = single(across)
+    distance = chord_distance_m(
+        narrow_across * side_east + ahead_east,
+        narrow_across * side_north + ahead_north,
+        mast.scale,
+        mast.scale_gradient_east_per_m,
+        mast.scale_gradient_north_per_m,
     )
-    if flat_obstacle.size > 0:
-        crossing(
-            narrow, place, lanes, flat_obstacle, wedge, back_line, 0.0, OWN_WOOD + back * LANES
-        )
+    in_window = (number >= wedge.lateral_low) & (number <= wedge.lateral_high)
+    # Cells on the diagonals belong to the wedges east and west.
+    aside = abs(across)
+    in_wedge = aside <= t if wedge.along_rows else aside < t
+    square = across * across + t * t
+    in_ring = (square > inner * inner) & (square <= outer * outer)
+    wanted = has_cell & in_window & in_wedge & in_ring & (distance <= radius_m)
+    cell = min(max(whole(number), np.int32(0)), np.int32(wedge.lateral_last))
+    store(place, CELL, cell)
+    store(slopes, ACROSS, across)
+    share = where(has_cell, single((number - here) / (there - here)), 0.0)
+    # A radial behind a hole says nothing: the cell takes what the nearer one knows, if that does.
+    nearer_next = share > 0.5
+    here_holes, there_holes = load(narrow, HOLES), load(narrow, HOLES + 1)
+    either = (here_holes != here_holes) | (there_holes != there_holes)
+    store(narrow, CELL_HOLES, where(nearer_next, there_holes, here_holes))
+    store(narrow, SHARE_OF_NEXT, where(either, where(nearer_next, 1.0, 0.0), share))
+    store(narrow, DISTANCE, distance)
+    store(narrow, WANTED, where(wanted, 1.0, 0.0))
+    return any_lane(wanted)
 
 
 @scalar
 def own_profile(
     narrow: NDArray,
-    wide: NDArray,
-    lanes: int,
+    slopes: NDArray,
+    place: NDArray,
+    flat_surface: NDArray,
+    flat_ground: NDArray,
+    flat_obstacle: NDArray,
     t: float,
     steps: float,
-    has_obstacles: bool,
+    wedge: Wedge,
+    line: int,
+    mast: Mast,
     link: Link,
 ) -> None:
-    """Each cell's own last samples, and the horizon seen from the mast on the way to it."""
-    u = f4(steps)
-    per_wave = f4(2.0 / link.wavelength_m)
-    one = f4(1.0)
-    square = f4(t * t)
-    for lane in range(lanes):
-        across = f4(wide[ACROSS + lane])
-        length = np.sqrt(square + across * across) - f4(1e-3)
-        whole = f4(np.int32(length))
-        narrow[SAMPLE_SHARE + lane] = one / (whole + one)
-    for lane in range(lanes):
-        distance = narrow[DISTANCE + lane]
-        inverse = one / distance
-        narrow[PER_METRE + lane] = u * inverse
-        narrow[NU_SCALE + lane] = u * np.sqrt(inverse * per_wave)
-        narrow[GROUND + lane] = narrow[OWN_CROSSING + lane]
-        narrow[TX_SLOPE + lane] = narrow[SURFACE_SLOPE + lane]
-        narrow[CELL_GROUND_SLOPE + lane] = narrow[GROUND_SLOPE + lane]
-        narrow[CELL_HOLES + lane] = narrow[HOLES + lane]
-    _own_sample(narrow, lanes, t, steps, has_obstacles, link, 1)
-    _own_sample(narrow, lanes, t, steps, has_obstacles, link, 2)
-    _own_sample(narrow, lanes, t, steps, has_obstacles, link, 3)
-
-
-@pasted
-def _own_sample(
-    narrow: NDArray,
-    lanes: int,
-    t: float,
-    steps: float,
-    has_obstacles: bool,
-    link: Link,
-    q: int,
-) -> None:
-    """The sample q steps before each cell."""
+    """Each cell's ground, its own last samples, and the horizon seen from the mast towards it."""
+    across = single(load(slopes, ACROSS))
+    length = math.sqrt(across * across + f4(t * t)) - 1e-3
+    per_sample = 1.0 / (single(whole(length)) + 1.0)  # spacing of the cell's exact samples
+    distance = load(narrow, DISTANCE)
+    inverse = 1.0 / distance
+    store(narrow, PER_METRE, inverse * f4(steps))
+    store(narrow, NU_SCALE, math.sqrt(inverse * f4(2.0 / link.wavelength_m)) * f4(steps))
+    share = load(narrow, SHARE_OF_NEXT)
+    store(
+        narrow,
+        CELL_GROUND_SLOPE,
+        between(load(narrow, GROUND_SLOPE), load(narrow, GROUND_SLOPE + 1), share),
+    )
+    store(narrow, TX_SLOPE, _horizon(narrow, place, flat_surface, share))
+    cell = load(place, CELL)
+    stride = np.int32(wedge.lateral_stride)
+    ground = gather(flat_ground, line * wedge.line_stride, cell * stride) - f4(link.tx_height_m)
+    store(narrow, GROUND, ground)
+    has_obstacles = flat_obstacle.size > 0
+    wood = ground * 0.0
+    if has_obstacles:
+        wood = gather(flat_obstacle, line * wedge.line_stride, cell * stride)
     bend = f4(1.0 / (2.0 * link.earth_radius_m))
-    near = OWN_CROSSING + (q - 1) * LANES
-    far = OWN_CROSSING + q * LANES
-    near_wood = OWN_WOOD + (q - 1) * LANES
-    far_wood = OWN_WOOD + q * LANES
-    lowest = max(t - q, 0.0)
-    # The sample lies t * (1 - share) - lowest above the lower line, of this line spacing.
-    start = f4((t - lowest) / (t - (q - 1) - lowest))
-    fall = f4(t / (t - (q - 1) - lowest))
-    per_step = f4(1.0 / steps)
     clearing = f4(link.obstacle_clearing_m)
-    one, none = f4(1.0), f4(0.0)
-    lowest_possible = f4(-np.inf)
-    for lane in range(lanes):
-        distance = narrow[DISTANCE + lane]
-        share = f4(q) * narrow[SAMPLE_SHARE + lane]
-        exists = share < f4(1.0 - 1e-6)
-        share = share if exists else f4(0.5)
-        part = start - fall * share if exists else none
-        height = narrow[far + lane] + part * (narrow[near + lane] - narrow[far + lane])
-        x = distance * (one - share)
+    for q in range(1, OWN_SAMPLES + 1):
+        # Sample q lies between the q-th line before the cell's and the one after that.
+        far_ground, far_wood = ground * 0.0, wood
+        back_t = max(t - q, 0.0)
+        if back_t > 0.0:
+            far_ground = _own_crossing(flat_ground, across, cell, t, line, q, wedge)
+            far_ground = far_ground - f4(link.tx_height_m)
+            if has_obstacles:
+                far_wood = _own_crossing(flat_obstacle, across, cell, t, line, q, wedge)
+        else:  # the mast stands there
+            far_ground = ground * 0.0 + f4(mast.ground_m - link.tx_height_m)
+            far_wood = far_ground * 0.0
+        part = per_sample * f4(q)
+        exists = part < f4(1.0 - 1e-6)
+        part = where(exists, part, 0.5)
+        near_t = t - (q - 1)
+        along = f4((t - back_t) / (near_t - back_t)) - part * f4(t / (near_t - back_t))
+        along = where(exists, along, 0.0)
+        height = far_ground + along * (ground - far_ground)
+        x = distance * (1.0 - part)
         surface = height
         if has_obstacles:
-            wood = narrow[far_wood + lane] + part * (
-                narrow[near_wood + lane] - narrow[far_wood + lane]
-            )
-            counts = (x >= clearing) & (distance * share >= clearing)
-            surface = height + wood if counts else height
-        bent = surface - x * x * bend if exists else lowest_possible
-        slope_share = per_step / (one - share)
-        slope = height * slope_share if exists else lowest_possible
-        narrow[SHARE + (q - 1) * LANES + lane] = share
-        narrow[OWN_BENT + (q - 1) * LANES + lane] = bent
-        narrow[TX_SLOPE + lane] = max(bent * slope_share, narrow[TX_SLOPE + lane])
-        narrow[CELL_GROUND_SLOPE + lane] = max(slope, narrow[CELL_GROUND_SLOPE + lane])
-        narrow[CELL_HOLES + lane] += (height - height) if exists else none
+            counts = (x >= clearing) & (distance * part >= clearing)
+            surface = where(counts, height + far_wood + along * (wood - far_wood), height)
+        bent = where(exists, surface - x * x * bend, LOWEST)
+        per_step = f4(1.0 / steps) / (1.0 - part)
+        slope = where(exists, height * per_step, LOWEST)
+        store(narrow, OWN_SHARE + (q - 1) * LANES, part)
+        store(narrow, OWN_BENT + (q - 1) * LANES, bent)
+        store(narrow, TX_SLOPE, max(bent * per_step, load(narrow, TX_SLOPE)))
+        store(narrow, CELL_GROUND_SLOPE, max(slope, load(narrow, CELL_GROUND_SLOPE)))
+        hole = where(exists, height - height, 0.0)
+        store(narrow, CELL_HOLES, load(narrow, CELL_HOLES) + hole)
+        ground, wood = far_ground, far_wood
+
+
+@inlined
+def _own_crossing(
+    flat: NDArray, across: Any, cell: Any, t: float, line: int, back: int, wedge: Wedge
+) -> Any:
+    """Raster values where the cells' own lines to the mast cross the line ``back`` lines before."""
+    aside = across * f4(-back / t)  # from the cell, at most ``back``
+    number = whole(math.floor(aside))
+    share = aside - single(number)
+    last = np.int32(wedge.lateral_last)
+    index = cell + number
+    inside = (index >= np.int32(0)) & (index < last)
+    index = min(max(index, np.int32(0)), last)
+    start = (line - back * wedge.forward) * wedge.line_stride
+    stride = np.int32(wedge.lateral_stride)
+    return crossing(flat, start, stride, last, index, where(inside, share, 0.0))
+
+
+@inlined
+def _horizon(narrow: NDArray, place: NDArray, flat_surface: NDArray, share: Any) -> Any:
+    """Steepest slope from the mast on the way to the cells, short of their own samples.
+
+    The terrain there lies in proportion between two radials. It is steepest where it is so on one
+    of them.
+    """
+    slope, next_slope = load(narrow, SURFACE_SLOPE), load(narrow, SURFACE_SLOPE + 1)
+    at, next_at = load(place, SURFACE_AT), load(place, SURFACE_AT + 1)
+    lane = lane_numbers()
+    other = gather(flat_surface, 1, at * np.int32(LANES) + lane) / (single(at) + 1.0)
+    next_other = gather(flat_surface, 0, next_at * np.int32(LANES) + lane) / (single(next_at) + 1.0)
+    return max(between(slope, other, share), between(next_other, next_slope, share))
 
 
 @scalar
-def own_rays(narrow: NDArray, lanes: int, steps: float, link: Link) -> None:
+def own_rays(narrow: NDArray, steps: float, link: Link) -> None:
     """The ray to each cell's receiver, RX_ABOVE its ground."""
-    bend = f4(1.0 / (2.0 * link.earth_radius_m))
-    per_step = f4(1.0 / steps)
-    for lane in range(lanes):
-        distance = narrow[DISTANCE + lane]
-        rx_bent = narrow[GROUND + lane] + narrow[RX_ABOVE + lane] - distance * distance * bend
-        narrow[RX_BENT + lane] = rx_bent
-        narrow[DIRECT + lane] = rx_bent * per_step
+    distance = load(narrow, DISTANCE)
+    bulge = distance * distance * f4(1.0 / (2.0 * link.earth_radius_m))
+    rx_bent = load(narrow, GROUND) + load(narrow, RX_ABOVE) - bulge
+    store(narrow, RX_BENT, rx_bent)
+    store(narrow, DIRECT, rx_bent * f4(1.0 / steps))
 
 
 @scalar
-def start_search(narrow: NDArray, lanes: int, steps: float) -> None:
+def start_search(narrow: NDArray, steps: float) -> None:
     """First candidates: the own samples, and what is too far from mattering to be sought.
 
     Where the ray is free the tangent from the receiver is not needed; what is not wanted is
     infinite, so that nothing is better.
     """
-    for lane in range(lanes):
-        blocked = narrow[TX_SLOPE + lane] >= narrow[DIRECT + lane]
-        wanted = (narrow[WANTED + lane] > f4(0.0)) & (narrow[CELL_HOLES + lane] == f4(0.0))
-        least = f4(FREE) / narrow[NU_SCALE + lane]
-        narrow[BEST_TANGENT + lane] = f4(-np.inf) if wanted & blocked else f4(np.inf)
-        narrow[BEST_NEAR + lane] = least if wanted else f4(np.inf)
-    _own_candidate(narrow, lanes, steps, 0)
-    _own_candidate(narrow, lanes, steps, 1)
-    _own_candidate(narrow, lanes, steps, 2)
-
-
-@pasted
-def _own_candidate(narrow: NDArray, lanes: int, steps: float, q: int) -> None:
-    u = f4(steps)
-    one = f4(1.0)
-    for lane in range(lanes):
-        share = narrow[SHARE + q * LANES + lane]
-        height = narrow[OWN_BENT + q * LANES + lane]
-        tangent = (height - narrow[RX_BENT + lane]) / (u * share)
-        place = u * (one - share)
-        near = (height - narrow[DIRECT + lane] * place) / np.sqrt(place * u * share)
-        narrow[BEST_TANGENT + lane] = max(tangent, narrow[BEST_TANGENT + lane])
-        narrow[BEST_NEAR + lane] = max(near, narrow[BEST_NEAR + lane])
+    direct = load(narrow, DIRECT)
+    rx = load(narrow, RX_BENT)
+    blocked = load(narrow, TX_SLOPE) >= direct
+    wanted = (load(narrow, WANTED) > 0.0) & (load(narrow, CELL_HOLES) == 0.0)
+    best_tangent = where(wanted & blocked, LOWEST, math.inf)
+    best_near = where(wanted, f4(FREE) / load(narrow, NU_SCALE), math.inf)
+    for q in range(OWN_SAMPLES):
+        share = load(narrow, OWN_SHARE + q * LANES)
+        height = load(narrow, OWN_BENT + q * LANES)
+        left = share * f4(steps)
+        place = f4(steps) - left
+        best_tangent = max((height - rx) / left, best_tangent)
+        best_near = max((height - direct * place) / math.sqrt(place * left), best_near)
+    store(narrow, BEST_TANGENT, best_tangent)
+    store(narrow, BEST_NEAR, best_near)
 
 
 @scalar
@@ -303,8 +257,7 @@ def count_cleared(
     narrow: NDArray,
     ground: NDArray,
     surface: NDArray,
-    root: NDArray,
-    lanes: int,
+    tables: NDArray,
     low: int,
     high: int,
     steps: float,
@@ -315,19 +268,18 @@ def count_cleared(
 
     With ``horizon`` for the horizon seen from the mast, else for what the search seeks.
     """
+    distance, share = load(narrow, DISTANCE), load(narrow, SHARE_OF_NEXT)
     for i in range(low, high):
         k = steps - (i + 1.0)
-        place = f4(i + 1.0)
-        steepness = f4(1.0 / k)
-        weight = root[i] * f4(math.sqrt(steepness))
-        share = k / steps
-        for lane in range(lanes):
-            beyond = narrow[DISTANCE + lane] * share >= link.obstacle_clearing_m
-            height = surface[i, lane] if beyond else ground[i, lane]
-            if horizon:
-                narrow[TX_SLOPE + lane] = max(height / place, narrow[TX_SLOPE + lane])
-            else:
-                tangent = (height - narrow[RX_BENT + lane]) * steepness
-                near = (height - narrow[DIRECT + lane] * place) * weight
-                narrow[BEST_TANGENT + lane] = max(tangent, narrow[BEST_TANGENT + lane])
-                narrow[BEST_NEAR + lane] = max(near, narrow[BEST_NEAR + lane])
+        at = i * LANES
+        beyond = distance * f4(k / steps) >= f4(link.obstacle_clearing_m)
+        bare = between(load(ground, at), load(ground, at + 1), share)
+        height = where(beyond, between(load(surface, at), load(surface, at + 1), share), bare)
+        if horizon:
+            store(narrow, TX_SLOPE, max(height * f4(1.0 / (i + 1.0)), load(narrow, TX_SLOPE)))
+        else:
+            tangent = (height - load(narrow, RX_BENT)) * f4(1.0 / k)
+            near = height - load(narrow, DIRECT) * f4(i + 1.0)
+            near = near * (tables[i] * f4(1.0 / math.sqrt(k)))
+            store(narrow, BEST_TANGENT, max(tangent, load(narrow, BEST_TANGENT)))
+            store(narrow, BEST_NEAR, max(near, load(narrow, BEST_NEAR)))

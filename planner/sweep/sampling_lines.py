@@ -1,37 +1,45 @@
 """Terrain under a fan: samples of its radials, a cell's width apart."""
 
 import math
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
-from planner.physics._jit import pasted, scalar
+from planner.physics._jit import inlined, scalar
+from planner.physics._lanes import (
+    LANES,
+    gather,
+    lane_numbers,
+    load,
+    next_lane,
+    previous_lane,
+    single,
+    store,
+    where,
+    whole,
+    wide,
+)
+from planner.sweep.course import Course, angle_between
 from planner.sweep.state import (
     BLOCK,
     BULGE,
     BULGE_DRIFT,
-    CROSSING,
-    EDGE,
-    EDGE_STEP,
-    FIXED,
-    FRACTION,
     GROUND_SLOPE,
     GROUP,
     HOLES,
-    INDEX,
-    LAST_CROSSING,
     LAST_GROUND,
-    LOWER,
+    LOWEST,
     MOMENT,
-    NEXT_INDEX,
     REGION,
     RX_ABOVE,
-    SPACING,
+    SLOPE,
     SUM,
+    SURFACE_AT,
     SURFACE_SLOPE,
-    UPPER,
     Link,
     Mast,
+    Tables,
     Wedge,
 )
 
@@ -41,27 +49,30 @@ f4 = np.float32
 @scalar
 def start_fan(
     narrow: NDArray,
+    slopes: NDArray,
     place: NDArray,
-    lanes: int,
+    surface: NDArray,
     first_radial: int,
     outer: int,
     wedge: Wedge,
     mast: Mast,
     link: Link,
+    course: Course,
 ) -> None:
     """Set up the lanes of the radials ``first_radial`` and following.
 
-    Radial r crosses the line at distance t (in cells) at sinh(r * SPACING / outer) * t beside the
-    mast: where they reach the circle of radius ``outer`` cells all radials are SPACING cells apart
-    along their line.
+    Radial r crosses the line at distance t (in cells) at sinh(r * angle) * t beside the mast: where
+    they reach the ring's outer circle all radials are equally far apart along their line. Lanes
+    beyond the last radial repeat it.
     """
-    for edge in range(lanes + 1):
-        slope = math.sinh((first_radial + edge - 0.5) * SPACING / outer)
-        place[EDGE + edge] = math.floor((wedge.side + slope * wedge.first_t) * FIXED + 0.5)
-        place[EDGE_STEP + edge] = math.floor(slope * FIXED + 0.5)
+    angle = angle_between(outer)
+    unused = surface.size // LANES - 1  # a sample that no radial reaches
+    for lane in range(2 * LANES):
+        radial = first_radial + min(lane, course.last_lane)
+        slopes[SLOPE + lane] = math.sinh(radial * angle)
     east, north = 0.0, 0.0
-    for lane in range(lanes):
-        slope = math.sinh((first_radial + lane) * SPACING / outer)
+    for lane in range(LANES):
+        slope = slopes[SLOPE + lane]
         if wedge.along_rows:
             east, north = wedge.forward * mast.cell_m, -slope * mast.cell_m
         else:
@@ -75,54 +86,59 @@ def start_fan(
         narrow[BULGE + lane] = stretch_m * stretch_m / (2.0 * link.earth_radius_m)
         narrow[BULGE_DRIFT + lane] = 2.0 * drift
         narrow[LAST_GROUND + lane] = mast.ground_m - link.tx_height_m
-        narrow[SURFACE_SLOPE + lane] = -np.inf
-        narrow[GROUND_SLOPE + lane] = -np.inf
+        narrow[SURFACE_SLOPE + lane] = LOWEST
+        narrow[GROUND_SLOPE + lane] = LOWEST
         narrow[SUM + lane] = 0.0
         narrow[MOMENT + lane] = 0.0
         narrow[HOLES + lane] = 0.0
         narrow[RX_ABOVE + lane] = link.receiver_height_m
+        place[SURFACE_AT + lane] = unused
+        surface[unused * LANES + lane] = LOWEST
 
 
-@pasted
-def crossing(
-    narrow: NDArray,
-    place: NDArray,
-    lanes: int,
-    flat: NDArray,
-    wedge: Wedge,
-    line: int,
-    below: float,
-    out: int,
-) -> None:
-    """Raster values less ``below`` at the places INDEX + FRACTION of a line, into ``out``.
+@inlined
+def between(one: Any, other: Any, share: Any) -> Any:
+    """What lies at a share of the way from one to the other, neither of them NaN."""
+    return one * (1.0 - share) + other * share
+
+
+@inlined
+def crossing(flat: NDArray, start: int, stride: int, last: int, index: Any, share: Any) -> Any:
+    """Raster values on a line, at a share of the way from ``index`` to the next place along it.
 
     ``flat`` is the raster in one dimension. A cell without weight may be a hole.
     """
-    start = line * wedge.line_stride
-    stride = wedge.lateral_stride
-    for lane in range(lanes):
-        narrow[LOWER + lane] = flat[np.uint64(start + place[INDEX + lane] * stride)]
-    for lane in range(lanes):
-        narrow[UPPER + lane] = flat[np.uint64(start + place[NEXT_INDEX + lane] * stride)]
-    base = f4(below)
-    for lane in range(lanes):
-        share = narrow[FRACTION + lane]
-        low = narrow[LOWER + lane]
-        between = low + share * (narrow[UPPER + lane] - low)
-        narrow[out + lane] = (between if share > f4(0.0) else low) - base
+    low = gather(flat, start, index * stride)
+    high = gather(flat, start, min(index + 1, last) * stride)
+    return where(share > 0.0, low + share * (high - low), low)
+
+
+@inlined
+def _sharpened(height: Any) -> Any:
+    """Heights so far beyond their own that what lies between two radials is right on average.
+
+    In proportion between two radials, terrain of curvature c lies lower than it is by
+    c x (s - x) / 2 at x of s between them, c s^2 / 12 on average: ridges would be cut. c s^2 is the
+    second difference from radial to radial.
+    """
+    lane = lane_numbers()
+    inner = (lane > 0) & (lane < LANES - 1)
+    difference = previous_lane(height) - 2.0 * height + next_lane(height)
+    sharpened = height - difference * (1.0 / 12.0)
+    # A hole beside says nothing.
+    return where(inner & (sharpened == sharpened), sharpened, height)
 
 
 @scalar
 def take_sample(
-    narrow: NDArray,
-    place: NDArray,
+    slopes: NDArray,
     ground: NDArray,
     surface: NDArray,
     flat_ground: NDArray,
     flat_obstacle: NDArray,
-    lanes: int,
     wedge: Wedge,
     line: int,
+    t: float,
     back: float,
     sample: int,
     link: Link,
@@ -131,44 +147,24 @@ def take_sample(
 
     ``back`` is at least 0 and less than 1. A line without weight may be a hole.
     """
-    last = wedge.lateral_last
-    turned_back = int(back * FIXED)
-    for lane in range(lanes):
-        step = (place[EDGE_STEP + lane] + place[EDGE_STEP + lane + 1]) >> 1
-        at = (place[EDGE + lane] + place[EDGE + lane + 1]) >> 1
-        at -= ((step >> 8) * (turned_back >> 8)) >> 16
-        i = at >> 32
-        share = f4((at >> 1) & 0x7FFFFFFF) * f4(2.0**-31)
-        inside = (i >= 0) & (i < last)
-        place[INDEX + lane] = min(max(i, 0), last)
-        place[NEXT_INDEX + lane] = min(max(i + 1, 0), last)
-        narrow[FRACTION + lane] = share if inside else f4(0.0)
-    line_before = min(max(line - wedge.forward, 0), wedge.last_of_all)
+    last = np.int32(wedge.lateral_last)
+    stride = np.int32(wedge.lateral_stride)
+    at = load(slopes, SLOPE) * (t - back) + wedge.side
+    inside = (at >= 0.0) & (at < wedge.lateral_last)
+    index = min(max(whole(at), np.int32(0)), last)
+    share = where(inside, single(at - wide(index)), 0.0)
+    start = line * wedge.line_stride
+    start_before = min(max(line - wedge.forward, 0), wedge.last_of_all) * wedge.line_stride
     part = f4(back)
-    crossing(narrow, place, lanes, flat_ground, wedge, line, link.tx_height_m, CROSSING)
+    height = crossing(flat_ground, start, stride, last, index, share)
     if back > 0.0:
-        crossing(
-            narrow, place, lanes, flat_ground, wedge, line_before, link.tx_height_m, LAST_CROSSING
-        )
-        for lane in range(lanes):
-            here = narrow[CROSSING + lane]
-            ground[sample, lane] = here + part * (narrow[LAST_CROSSING + lane] - here)
-    else:
-        for lane in range(lanes):
-            ground[sample, lane] = narrow[CROSSING + lane]
+        before = crossing(flat_ground, start_before, stride, last, index, share)
+        height = height + part * (before - height)
+    store(ground, sample * LANES, _sharpened(height) - f4(link.tx_height_m))
     if flat_obstacle.size > 0:
-        crossing(narrow, place, lanes, flat_obstacle, wedge, line, 0.0, CROSSING)
-        crossing(narrow, place, lanes, flat_obstacle, wedge, line_before, 0.0, LAST_CROSSING)
-        for lane in range(lanes):
-            here = narrow[CROSSING + lane]
-            surface[sample, lane] = here + part * (narrow[LAST_CROSSING + lane] - here)
-
-
-@scalar
-def next_line(place: NDArray, lanes: int) -> None:
-    """Move on: the lanes' edges shift."""
-    for edge in range(lanes + 1):
-        place[EDGE + edge] += place[EDGE_STEP + edge]
+        here = crossing(flat_obstacle, start, stride, last, index, share)
+        before = crossing(flat_obstacle, start_before, stride, last, index, share)
+        store(surface, sample * LANES, here + part * (before - here))
 
 
 @scalar
@@ -176,106 +172,78 @@ def include_sample(
     narrow: NDArray,
     ground: NDArray,
     surface: NDArray,
-    lanes: int,
     sample: int,
     t: float,
     has_obstacles: bool,
     clearing_bulge_m: float,
 ) -> None:
-    """Bend the sample's ground and add it to what the smooth surface and the horizon need.
+    """Let a sample at distance t count: bend it, add it to the sums and to the ground's horizon.
 
-    Obstacles do not count where the earth's bulge is below ``clearing_bulge_m``: near the mast.
+    Obstacles within the mast's clearing do not count.
     """
-    steps = f4(sample + 1.0)
-    per_step = f4(1.0 / (sample + 1.0))
-    t1 = f4(t)
-    t2 = f4(t * t)
-    for lane in range(lanes):
-        height = ground[sample, lane]
-        bulge = t2 * (narrow[BULGE + lane] * (f4(1.0) - t1 * narrow[BULGE_DRIFT + lane]))
-        ground[sample, lane] = height - bulge
-        narrow[GROUND_SLOPE + lane] = max(height * per_step, narrow[GROUND_SLOPE + lane])
-        narrow[SUM + lane] += height
-        narrow[MOMENT + lane] += steps * height
-        narrow[LAST_GROUND + lane] = height
-        narrow[HOLES + lane] += height - height
+    place = f4(sample + 1.0)
+    height = load(ground, sample * LANES)
+    drift = 1.0 - f4(t) * load(narrow, BULGE_DRIFT)
+    bulge = f4(t * t) * (load(narrow, BULGE) * drift)
+    slope = where(height == height, height, LOWEST) * f4(1.0 / (sample + 1.0))
+    store(narrow, GROUND_SLOPE, max(slope, load(narrow, GROUND_SLOPE)))
+    store(narrow, SUM, load(narrow, SUM) + height)
+    store(narrow, MOMENT, load(narrow, MOMENT) + place * height)
+    store(narrow, LAST_GROUND, height)
+    store(narrow, HOLES, load(narrow, HOLES) + (height - height))
+    bent = height - bulge
+    bent = where(bent == bent, bent, LOWEST)
+    store(ground, sample * LANES, bent)
     if has_obstacles:
-        least = f4(clearing_bulge_m)
-        for lane in range(lanes):
-            bulge = t2 * (narrow[BULGE + lane] * (f4(1.0) - t1 * narrow[BULGE_DRIFT + lane]))
-            above = surface[sample, lane] if bulge >= least else f4(0.0)
-            surface[sample, lane] = ground[sample, lane] + above
+        above = where(bulge >= f4(clearing_bulge_m), load(surface, sample * LANES), 0.0)
+        raised = bent + above
+        store(surface, sample * LANES, where(raised == raised, raised, LOWEST))
 
 
 @scalar
 def raise_horizon(
-    narrow: NDArray,
-    surface: NDArray,
-    block_lid: NDArray,
-    group_lid: NDArray,
-    region_lid: NDArray,
-    lanes: int,
-    sample: int,
+    narrow: NDArray, place: NDArray, surface: NDArray, lids: NDArray, at: Tables, sample: int
 ) -> None:
     """Let a sample's surface count for the mast's horizon and for the lids over the blocks."""
-    per_step = f4(1.0 / (sample + 1.0))
-    for lane in range(lanes):
-        narrow[SURFACE_SLOPE + lane] = max(
-            surface[sample, lane] * per_step, narrow[SURFACE_SLOPE + lane]
-        )
+    slope = load(surface, sample * LANES) * f4(1.0 / (sample + 1.0))
+    best = load(narrow, SURFACE_SLOPE)
+    higher = slope > best
+    store(narrow, SURFACE_SLOPE, where(higher, slope, best))
+    store(place, SURFACE_AT, where(higher, np.int32(sample), load(place, SURFACE_AT)))
     stop = sample + 1
     if stop % BLOCK == 0:
         block = stop // BLOCK - 1
-        _put_lid_on_samples(surface, stop - BLOCK, block_lid, block, lanes)
+        _put_lid_on_samples(surface, stop - BLOCK, lids, block)
         if (block + 1) % GROUP == 0:
-            group = (block + 1) // GROUP - 1
-            _put_lid_on_lids(block_lid, block + 1 - GROUP, GROUP, group_lid, group, lanes)
+            group = at.group_lids + 2 * LANES * (block // GROUP)
+            _put_lid_on_lids(lids, block + 1 - GROUP, GROUP, group)
         if (block + 1) % REGION == 0:
-            region = (block + 1) // REGION - 1
-            _put_lid_on_lids(block_lid, block + 1 - REGION, REGION, region_lid, region, lanes)
+            region = at.region_lids + 2 * LANES * (block // REGION)
+            _put_lid_on_lids(lids, block + 1 - REGION, REGION, region)
 
 
 @scalar
-def _put_lid_on_samples(
-    surface: NDArray, first: int, lids: NDArray, block: int, lanes: int
-) -> None:
+def _put_lid_on_samples(surface: NDArray, first: int, lids: NDArray, block: int) -> None:
     """The lid of a block: as steep as from its first to its last sample, and above them all."""
-    start, end = 2 * block, 2 * block + 1
-    whole = f4(BLOCK)
-    share = f4(1.0 / (BLOCK - 1.0))
-    for lane in range(lanes):
-        lids[start, lane] = surface[first, lane]
-    for lane in range(lanes):
-        rise = (surface[first + BLOCK - 1, lane] - surface[first, lane]) * share
-        lids[end, lane] = rise
+    start = load(surface, first * LANES)
+    rise = (load(surface, (first + BLOCK - 1) * LANES) - start) * f4(1.0 / (BLOCK - 1.0))
+    fallen = rise
     for i in range(1, BLOCK - 1):
-        along = f4(i)
-        for lane in range(lanes):
-            level = surface[first + i, lane] - along * lids[end, lane]
-            lids[start, lane] = max(level, lids[start, lane])
-    for lane in range(lanes):
-        lids[end, lane] = lids[start, lane] + whole * lids[end, lane]
+        start = max(load(surface, (first + i) * LANES) - fallen, start)
+        fallen = fallen + rise
+    store(lids, 2 * block * LANES, start)
+    store(lids, (2 * block + 1) * LANES, start + f4(BLOCK) * rise)
 
 
 @scalar
-def _put_lid_on_lids(
-    lids: NDArray, first: int, blocks: int, out: NDArray, row: int, lanes: int
-) -> None:
+def _put_lid_on_lids(lids: NDArray, first: int, blocks: int, out: int) -> None:
     """The lid over the lids of ``blocks`` blocks."""
-    start, end = 2 * row, 2 * row + 1
-    last = first + blocks - 1
-    whole = f4(blocks)
-    share = f4(1.0 / blocks)
-    for lane in range(lanes):
-        out[start, lane] = lids[2 * first, lane]
-    for lane in range(lanes):
-        out[end, lane] = (lids[2 * last + 1, lane] - lids[2 * first, lane]) * share
+    start = load(lids, 2 * first * LANES)
+    end = load(lids, (2 * (first + blocks) - 1) * LANES)
+    rise = (end - start) * f4(1.0 / blocks)
     for n in range(blocks):
-        here, next_edge = f4(n), f4(n + 1)
-        near, far = 2 * (first + n), 2 * (first + n) + 1
-        for lane in range(lanes):
-            rise = out[end, lane]
-            level = max(lids[near, lane] - here * rise, lids[far, lane] - next_edge * rise)
-            out[start, lane] = max(level, out[start, lane])
-    for lane in range(lanes):
-        out[end, lane] = out[start, lane] + whole * out[end, lane]
+        near = load(lids, 2 * (first + n) * LANES) - f4(n) * rise
+        far = load(lids, (2 * (first + n) + 1) * LANES) - f4(n + 1) * rise
+        start = max(max(near, far), start)
+    store(lids, out, start)
+    store(lids, out + LANES, start + f4(blocks) * rise)
