@@ -7,8 +7,8 @@ import pytest
 
 from planner.physics._lanes import LANES
 from planner.sweep.course import new_fan, tables_of
-from planner.sweep.extremes import search
 from planner.sweep.sampling_lines import raise_horizon
+from planner.sweep.search import search_extremes
 from planner.sweep.state import (
     BEST_NEAR,
     BEST_TANGENT,
@@ -67,7 +67,9 @@ def test_bounds_change_no_result(samples, roughness_m):
         row[DIRECT][:] = rx / steps
         row[BEST_TANGENT][:] = LOWEST
         row[BEST_NEAR][:] = LOWEST
-        search(fan.narrow, fan.surface, fan.lids, fan.tables, fan.recalled, at, samples, steps)
+        search_extremes(
+            fan.narrow, fan.surface, fan.lids, fan.tables, fan.recalled, at, samples, steps
+        )
         place = np.arange(1.0, samples + 1.0)[:, np.newaxis]
         tangent = (heights - rx.astype(np.float32)) / (steps - place)
         ray = (rx / steps).astype(np.float32) * place
@@ -84,6 +86,6 @@ def test_what_cannot_be_beaten_is_left_alone():
     fan, at, row = fan_of(np.full((40, LANES), -50.0, dtype=np.float32), 40)
     row[BEST_TANGENT][:] = np.inf
     row[BEST_NEAR][:] = -1e-3
-    search(fan.narrow, fan.surface, fan.lids, fan.tables, fan.recalled, at, 40, 43.0)
+    search_extremes(fan.narrow, fan.surface, fan.lids, fan.tables, fan.recalled, at, 40, 43.0)
     assert (row[BEST_TANGENT] == math.inf).all()
     assert (row[BEST_NEAR] == np.float32(-1e-3)).all()

@@ -250,7 +250,18 @@ def walk_heights(
                         if top < 0 or low[lane, top] < high[lane, top]:
                             narrow[SPHERE + lane] = f4(0.0)
                     add_excess_over_sphere(
-                        narrow, bent_ground, lids, at, samples, far, t, steps, mast, link
+                        narrow,
+                        bent_ground,
+                        lids,
+                        tables,
+                        recalled,
+                        at,
+                        samples,
+                        far,
+                        t,
+                        steps,
+                        mast,
+                        link,
                     )
                 for lane in range(INTERVALS):
                     if depth[lane] == 0:

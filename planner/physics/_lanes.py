@@ -181,7 +181,8 @@ _define(math.floor, _REAL, _library("floor"))
 def _where(typing_context: Any, condition: Any, one: Any, other: Any) -> Any:
     if condition is MASK:
         of_lanes = [kind for kind in (one, other) if isinstance(kind, LaneType)]
-        result: Any = of_lanes[0] if of_lanes else SINGLE
+        whole_numbers = isinstance(one, types.Integer) and isinstance(other, types.Integer)
+        result: Any = of_lanes[0] if of_lanes else WHOLE if whole_numbers else SINGLE
     else:
         result = typing_context.unify_types(one, other)
 

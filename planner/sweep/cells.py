@@ -38,6 +38,7 @@ from planner.sweep.state import (
     RX_ABOVE,
     SHARE_OF_NEXT,
     SPHERE,
+    STATUS,
     SUM,
     TX_SLOPE,
     V1,
@@ -129,25 +130,31 @@ def write_cells(
     wedge: Wedge,
     line: int,
     mast: Mast,
-    path_loss_db: NDArray,
-    departure_elevation_deg: NDArray,
-    fresnel_clearance_ratio: NDArray,
-    status: NDArray,
+    flat_loss_db: NDArray,
+    flat_elevation_deg: NDArray,
+    flat_clearance_ratio: NDArray,
+    flat_status: NDArray,
+    cols: int,
 ) -> None:
-    """Put the results of a line into the layers."""
+    """Put the results of a line into the layers, which are in one dimension, ``cols`` to a row."""
+    ground, holes, loss = load(narrow, GROUND), load(narrow, CELL_HOLES), load(narrow, LOSS)
+    known = (ground == ground) & (loss == loss)
+    status = where(known, np.int32(COMPUTED), np.int32(NO_DATA))
+    crosses = (ground == ground) & (holes != 0.0)
+    store(place, STATUS, where(crosses, np.int32(CROSSES_HOLE), status))
+    known = known & (holes == 0.0)
+    store(narrow, LOSS, where(known, loss, math.nan))
+    store(narrow, ELEVATION, where(known, load(narrow, ELEVATION), math.nan))
+    store(narrow, RATIO, where(known, load(narrow, RATIO), math.nan))
+    start = (line - mast.row_start) * cols - mast.col_start
+    stride = 1
+    if wedge.along_rows:
+        start = line - mast.col_start - mast.row_start * cols
+        stride = cols
     for lane in range(INTERVALS):
-        if narrow[WANTED + lane] == f4(0.0):
-            continue
-        row = (place[CELL + lane] if wedge.along_rows else line) - mast.row_start
-        col = (line if wedge.along_rows else place[CELL + lane]) - mast.col_start
-        if math.isnan(narrow[GROUND + lane]):
-            status[row, col] = NO_DATA
-        elif narrow[CELL_HOLES + lane] != f4(0.0):
-            status[row, col] = CROSSES_HOLE
-        elif math.isnan(narrow[LOSS + lane]):
-            status[row, col] = NO_DATA
-        else:
-            status[row, col] = COMPUTED
-            path_loss_db[row, col] = narrow[LOSS + lane]
-            departure_elevation_deg[row, col] = narrow[ELEVATION + lane]
-            fresnel_clearance_ratio[row, col] = narrow[RATIO + lane]
+        if narrow[WANTED + lane] > f4(0.0):
+            at = start + place[CELL + lane] * stride
+            flat_loss_db[at] = narrow[LOSS + lane]
+            flat_elevation_deg[at] = narrow[ELEVATION + lane]
+            flat_clearance_ratio[at] = narrow[RATIO + lane]
+            flat_status[at] = place[STATUS + lane]

@@ -13,6 +13,7 @@ from planner.sweep.state import (
     GROUP,
     INTERVALS,
     LANES,
+    LID,
     NARROW_ROWS,
     OWN_SAMPLES,
     PLACES,
@@ -169,8 +170,8 @@ def tables_of(outer: int) -> Tables:
     """Where in the fans of a ring things begin."""
     samples = _most_samples(outer)
     blocks = samples // BLOCK + LANES  # a vector more, here too
-    group_lids = 2 * LANES * blocks
-    region_lids = group_lids + 2 * LANES * (blocks // GROUP + 1)
+    group_lids = LID * blocks
+    region_lids = group_lids + LID * (blocks // GROUP + 1)
     return Tables(group_lids, region_lids, samples, samples + blocks, samples + 2 * blocks)
 
 
@@ -179,17 +180,16 @@ def new_fan(outer: int, has_obstacles: bool) -> Fan:
     """Working arrays for the fans of a ring."""
     at = tables_of(outer)
     samples = _most_samples(outer)
-    blocks = at.edge_steepness - at.block_roots
+    blocks = at.edge_inverse - at.edge_root
     ground = np.empty(LANES * samples, dtype=np.float32)
     surface = ground
     if has_obstacles:
         surface = np.empty(LANES * samples, dtype=np.float32)
-    lids = np.empty(at.region_lids + 2 * LANES * (blocks // REGION + 2), dtype=np.float32)
-    tables = np.empty(at.edge_weight + blocks, dtype=np.float32)
+    lids = np.empty(at.region_lids + LID * (blocks // REGION + 1), dtype=np.float32)
+    tables = np.empty(at.last_steps + 1, dtype=np.float32)
     for i in range(samples):
         tables[i] = 1.0 / math.sqrt(i + 1.0)
-    for block in range(blocks):
-        tables[at.block_roots + block] = 1.0 / math.sqrt(block * BLOCK + 1.0)
+    tables[at.last_steps] = -math.inf
     return Fan(
         np.zeros(NARROW_ROWS * LANES, dtype=np.float32),
         np.zeros(WIDE_ROWS * LANES, dtype=np.float64),
@@ -198,5 +198,5 @@ def new_fan(outer: int, has_obstacles: bool) -> Fan:
         surface,
         lids,
         tables,
-        np.zeros(1 + 2 * RECALLED, dtype=np.int64),
+        np.zeros(2 * (1 + 2 * RECALLED), dtype=np.int64),
     )

@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.physics._jit import inlined, scalar
-from planner.physics._lanes import LANES, any_lane, load, store, where
+from planner.physics._lanes import any_lane, load, store, where
 from planner.physics.bullington import bullington_loss_db_scalar, bullington_point_nu_scalar
 from planner.physics.fresnel import fresnel_parameter_scalar
 from planner.physics.smooth_surface import smooth_surface_ends
@@ -16,25 +16,17 @@ from planner.physics.spherical_earth import (
     nearest_clearance_m_scalar,
     spherical_earth_loss_db_scalar,
 )
-from planner.sweep.sampling_lines import between
+from planner.sweep.obstruction import start_obstruction
+from planner.sweep.search import search_obstruction
 from planner.sweep.state import (
-    BLOCK,
-    BULGE,
-    BULGE_DRIFT,
     CELL_GROUND_SLOPE,
     DISTANCE,
     GROUND,
-    GROUP,
     LOSS,
     LOWEST,
     OBSTRUCTION,
     OBSTRUCTION_SLOPE,
-    OWN_BENT,
-    OWN_SAMPLES,
-    OWN_SHARE,
-    REGION,
     RX_ABOVE,
-    SHARE_OF_NEXT,
     SPHERE,
     V1,
     V2,
@@ -82,127 +74,13 @@ def smooth_bullington_loss_db(
     return bullington_loss_db_scalar(where(total <= spacing, LOWEST, nu), total)
 
 
-@inlined
-def _above_ray(height: Any, bulge: Any, drift: Any, ray: Any, step: Any) -> Any:
-    """How high bare ground without curvature rises above the rays, from its bent height."""
-    return height + bulge * (1.0 - drift * step) * (step * step) - ray * step
-
-
-@scalar
-def _look_at(
-    narrow: NDArray,
-    ground: NDArray,
-    low: int,
-    high: int,
-    bulge: Any,
-    drift: Any,
-    ray: Any,
-    steps: float,
-) -> None:
-    """Let the samples ``low`` up to ``high`` count for OBSTRUCTION and OBSTRUCTION_SLOPE."""
-    share = load(narrow, SHARE_OF_NEXT)
-    highest, steepest = load(narrow, OBSTRUCTION), load(narrow, OBSTRUCTION_SLOPE)
-    for i in range(low, high):
-        height = between(load(ground, i * LANES), load(ground, i * LANES + 1), share)
-        above = _above_ray(height, bulge, drift, ray, f4(i + 1.0))
-        highest = max(above, highest)
-        steepest = max(above * f4(1.0 / (steps - (i + 1.0))), steepest)
-    store(narrow, OBSTRUCTION, highest)
-    store(narrow, OBSTRUCTION_SLOPE, steepest)
-
-
-@inlined
-def _may_rise(
-    narrow: NDArray,
-    lids: NDArray,
-    lid: int,
-    first_step: float,
-    last_step: float,
-    bulge: Any,
-    drift: Any,
-    ray: Any,
-    steps: float,
-) -> bool:
-    """Whether ground under a lid may count.
-
-    The bulge bends upwards, so what lies between the lid's ends, not bent, is below their line.
-    """
-    share = load(narrow, SHARE_OF_NEXT)
-    start = between(load(lids, lid), load(lids, lid + 1), share)
-    end = between(load(lids, lid + LANES), load(lids, lid + LANES + 1), share)
-    start = _above_ray(start, bulge, drift, ray, f4(first_step))
-    end = _above_ray(end, bulge, drift, ray, f4(last_step))
-    slope = max(start * f4(1.0 / (steps - first_step)), end * f4(1.0 / (steps - last_step)))
-    highest, steepest = load(narrow, OBSTRUCTION), load(narrow, OBSTRUCTION_SLOPE)
-    return any_lane((max(start, end) > highest) | (slope > steepest))
-
-
-@scalar
-def _find_obstruction(
-    narrow: NDArray,
-    ground: NDArray,
-    lids: NDArray,
-    at: Tables,
-    samples: int,
-    far: int,
-    t: float,
-    steps: float,
-    link: Link,
-) -> None:
-    """How high bare ground without curvature rises above the ray, and its steepest slope from the
-    receiver less the ray's, per step; 0 where nothing does, infinite where it is not asked for.
-
-    Blocks are passed over where their lids can raise neither.
-    """
-    rx_height = load(narrow, GROUND) + load(narrow, RX_ABOVE)
-    ray = rx_height * f4(1.0 / steps)
-    wanted = (load(narrow, SPHERE) > 0.0) & (load(narrow, CELL_GROUND_SLOPE) > ray)
-    store(narrow, OBSTRUCTION, where(wanted, 0.0, math.inf))
-    store(narrow, OBSTRUCTION_SLOPE, where(wanted, 0.0, math.inf))
-    if not any_lane(wanted):
-        return
-    per_line = f4(t / steps)
-    bulge = load(narrow, BULGE) * (per_line * per_line)
-    drift = load(narrow, BULGE_DRIFT) * per_line
-    bend = f4(1.0 / (2.0 * link.earth_radius_m))
-    distance = load(narrow, DISTANCE)
-    highest, steepest = load(narrow, OBSTRUCTION), load(narrow, OBSTRUCTION_SLOPE)
-    for q in range(OWN_SAMPLES):
-        part = load(narrow, OWN_SHARE + q * LANES)
-        x = distance * (1.0 - part)
-        above = load(narrow, OWN_BENT + q * LANES) + x * x * bend - rx_height * (1.0 - part)
-        highest = max(above, highest)
-        steepest = max(above / (part * f4(steps)), steepest)
-    store(narrow, OBSTRUCTION, highest)
-    store(narrow, OBSTRUCTION_SLOPE, steepest)
-    blocks = far // BLOCK
-    _look_at(narrow, ground, blocks * BLOCK, samples, bulge, drift, ray, steps)
-    block = 0
-    while block < blocks:
-        first = block * BLOCK + 1.0
-        if block % REGION == 0 and block + REGION <= blocks:
-            lid = at.region_lids + 2 * LANES * (block // REGION)
-            last = first + REGION * BLOCK
-            if not _may_rise(narrow, lids, lid, first, last, bulge, drift, ray, steps):
-                block += REGION
-                continue
-        if block % GROUP == 0 and block + GROUP <= blocks:
-            lid = at.group_lids + 2 * LANES * (block // GROUP)
-            last = first + GROUP * BLOCK
-            if not _may_rise(narrow, lids, lid, first, last, bulge, drift, ray, steps):
-                block += GROUP
-                continue
-        lid = 2 * LANES * block
-        if _may_rise(narrow, lids, lid, first, first + BLOCK, bulge, drift, ray, steps):
-            _look_at(narrow, ground, block * BLOCK, (block + 1) * BLOCK, bulge, drift, ray, steps)
-        block += 1
-
-
 @scalar
 def add_excess_over_sphere(
     narrow: NDArray,
     ground: NDArray,
     lids: NDArray,
+    tables: NDArray,
+    recalled: NDArray,
     at: Tables,
     samples: int,
     far: int,
@@ -215,7 +93,8 @@ def add_excess_over_sphere(
 
     That is what it takes beyond Bullington's smooth profile, 0 or more.
     """
-    _find_obstruction(narrow, ground, lids, at, samples, far, t, steps, link)
+    if start_obstruction(narrow, t, steps, link):
+        search_obstruction(narrow, ground, lids, tables, recalled, at, samples, far, steps)
     cell_ground = load(narrow, GROUND)
     rx_height = cell_ground + load(narrow, RX_ABOVE)
     highest = load(narrow, OBSTRUCTION)

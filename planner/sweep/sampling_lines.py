@@ -29,6 +29,7 @@ from planner.sweep.state import (
     GROUP,
     HOLES,
     LAST_GROUND,
+    LID,
     LOWEST,
     MOMENT,
     REGION,
@@ -215,10 +216,10 @@ def raise_horizon(
         block = stop // BLOCK - 1
         _put_lid_on_samples(surface, stop - BLOCK, lids, block)
         if (block + 1) % GROUP == 0:
-            group = at.group_lids + 2 * LANES * (block // GROUP)
+            group = at.group_lids + LID * (block // GROUP)
             _put_lid_on_lids(lids, block + 1 - GROUP, GROUP, group)
         if (block + 1) % REGION == 0:
-            region = at.region_lids + 2 * LANES * (block // REGION)
+            region = at.region_lids + LID * (block // REGION)
             _put_lid_on_lids(lids, block + 1 - REGION, REGION, region)
 
 
@@ -231,19 +232,33 @@ def _put_lid_on_samples(surface: NDArray, first: int, lids: NDArray, block: int)
     for i in range(1, BLOCK - 1):
         start = max(load(surface, (first + i) * LANES) - fallen, start)
         fallen = fallen + rise
-    store(lids, 2 * block * LANES, start)
-    store(lids, (2 * block + 1) * LANES, start + f4(BLOCK) * rise)
+    _store_lid(lids, LID * block, start, start + f4(BLOCK) * rise)
 
 
 @scalar
 def _put_lid_on_lids(lids: NDArray, first: int, blocks: int, out: int) -> None:
     """The lid over the lids of ``blocks`` blocks."""
-    start = load(lids, 2 * first * LANES)
-    end = load(lids, (2 * (first + blocks) - 1) * LANES)
+    start = load(lids, LID * first)
+    end = load(lids, LID * (first + blocks - 1) + LANES)
     rise = (end - start) * f4(1.0 / blocks)
     for n in range(blocks):
-        near = load(lids, 2 * (first + n) * LANES) - f4(n) * rise
-        far = load(lids, (2 * (first + n) + 1) * LANES) - f4(n + 1) * rise
+        near = load(lids, LID * (first + n)) - f4(n) * rise
+        far = load(lids, LID * (first + n) + LANES) - f4(n + 1) * rise
         start = max(max(near, far), start)
+    _store_lid(lids, out, start, start + f4(blocks) * rise)
+
+
+@inlined
+def _store_lid(lids: NDArray, out: int, start: Any, end: Any) -> None:
     store(lids, out, start)
-    store(lids, out + LANES, start + f4(blocks) * rise)
+    store(lids, out + LANES, end)
+    store(lids, out + 2 * LANES, next_lane(start) - start)
+    store(lids, out + 3 * LANES, next_lane(end) - end)
+
+
+@inlined
+def lid_of_cell(lids: NDArray, lid: int, share: Any) -> tuple[Any, Any]:
+    """Heights of a lid over a cell's profile, over its first sample and the one after its last."""
+    start = load(lids, lid) + load(lids, lid + 2 * LANES) * share
+    end = load(lids, lid + LANES) + load(lids, lid + 3 * LANES) * share
+    return start, end

@@ -4,9 +4,9 @@ from numpy.typing import NDArray
 
 from planner.physics._jit import scalar
 from planner.sweep.course import Course
-from planner.sweep.extremes import search
 from planner.sweep.own_line import count_cleared, start_search
 from planner.sweep.sampling_lines import include_sample, raise_horizon, take_sample
+from planner.sweep.search import search_extremes
 from planner.sweep.state import Link, Tables, Wedge
 
 
@@ -51,7 +51,7 @@ def find_extremes(
     start_search(narrow, steps)
     if far < samples:
         count_cleared(narrow, ground, surface, tables, far, samples, steps, link, False)
-    search(narrow, surface, lids, tables, recalled, at, far, steps)
+    search_extremes(narrow, surface, lids, tables, recalled, at, far, steps)
 
 
 @scalar

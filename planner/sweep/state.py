@@ -28,6 +28,7 @@ OWN_SAMPLES = 3
 BLOCK = 16  # samples that share one bound
 GROUP = 4  # blocks that share one further bound
 REGION = 16  # blocks that share one more
+LID = 4 * LANES  # numbers of a lid
 RECALLED = 8  # blocks that are looked at first because they held an extreme at the line before
 
 # Below any height or slope. Heights of holes are stored so, too: a vector sum of a finite number
@@ -103,11 +104,12 @@ class Fan(NamedTuple):
     place: NDArray  # int32
     ground: NDArray  # float32, bent, sample by sample LANES heights
     surface: NDArray  # float32, the same with obstacles; the same array without any
-    # Straight lids over the bent surface, as two heights of each lane: at the first sample of a
-    # block and at the one after its last. Blocks, then groups, then regions of them.
+    # Straight lids over the bent surface, as four rows: its heights over the first sample of a
+    # block, over the one after its last, and by how much the next lane's two are higher. Blocks,
+    # then groups, then regions of them.
     lids: NDArray  # float32
     tables: NDArray  # float32: 1 / sqrt(i + 1) of sample i, then what Tables tells
-    recalled: NDArray  # int64: number of blocks, then the blocks
+    recalled: NDArray  # int64, for each of two searches: number of blocks, then the blocks
 
 
 class Tables(NamedTuple):
@@ -115,9 +117,9 @@ class Tables(NamedTuple):
 
     group_lids: int
     region_lids: int
-    block_roots: int  # 1 / sqrt(i + 1) of each block's first sample
-    edge_steepness: int  # 1 / distance from the cell to a block's first sample
-    edge_weight: int  # 1 / sqrt of the product of that sample's distances to both ends
+    edge_root: int  # sqrt of the product of the distances of a block's first sample to both ends
+    edge_inverse: int  # 1 / that
+    last_steps: int  # distance of the line for which they were computed
 
 
 # Offsets into ``narrow``.
@@ -156,7 +158,10 @@ OBSTRUCTION = 34 * LANES  # most by which bare ground without curvature rises ab
 OBSTRUCTION_SLOPE = 35 * LANES  # steepest of it seen from the cell, less the ray's slope
 ROW_STEEPNESS = 36 * LANES  # of the samples that are looked at: 1 / distance from the cell
 ROW_WEIGHT = 37 * LANES  # 1 / sqrt of the product of the distances to both ends
-NARROW_ROWS = 38
+ROW_PLACE = 38 * LANES  # steps from the mast
+STEP_BULGE = 39 * LANES  # of the earth, per step squared
+STEP_DRIFT = 40 * LANES  # by how much less of it per step
+NARROW_ROWS = 41
 
 # Offsets into ``wide``.
 SLOPE = 0 * LANES  # by which each radial moves sideways from line to line
@@ -166,4 +171,5 @@ WIDE_ROWS = 3
 # Offsets into ``place``.
 CELL = 0 * LANES  # lateral index of the cell
 SURFACE_AT = 1 * LANES  # sample that is steepest seen from the mast so far
+STATUS = 2 * LANES  # what became of it
 PLACES = 3 * LANES

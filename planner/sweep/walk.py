@@ -40,8 +40,11 @@ def _walk(
     bent_ground, surface = fan.ground, fan.surface
     lids, tables, recalled = fan.lids, fan.tables, fan.recalled
     flat_ground, flat_obstacle = ground.reshape(ground.size), obstacle.reshape(obstacle.size)
-    path_loss, elevation = layers.path_loss_db, layers.departure_elevation_deg
-    clearance, status = layers.fresnel_clearance_ratio, layers.status
+    size, cols = layers.status.size, layers.status.shape[1]
+    path_loss = layers.path_loss_db.reshape(size)
+    elevation = layers.departure_elevation_deg.reshape(size)
+    clearance = layers.fresnel_clearance_ratio.reshape(size)
+    status = layers.status.reshape(size)
     has_obstacles = obstacle.size > 0
     course = course_of(outer, first_radial, inner, has_obstacles, mast, link)
     start_fan(narrow, slopes, place, surface, first_radial, outer, wedge, mast, link, course)
@@ -102,9 +105,22 @@ def _walk(
             losses(narrow, link)
             if t > course.spherical_t and may_meet_sphere(narrow, samples, steps, mast, link):
                 add_excess_over_sphere(
-                    narrow, bent_ground, lids, at, samples, far, t, steps, mast, link
+                    narrow,
+                    bent_ground,
+                    lids,
+                    tables,
+                    recalled,
+                    at,
+                    samples,
+                    far,
+                    t,
+                    steps,
+                    mast,
+                    link,
                 )
-            write_cells(narrow, place, wedge, line, mast, path_loss, elevation, clearance, status)
+            write_cells(
+                narrow, place, wedge, line, mast, path_loss, elevation, clearance, status, cols
+            )
         taken = sample_line(
             slopes,
             bent_ground,
