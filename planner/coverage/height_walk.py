@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 from planner.antenna.lookup import vector_gain_dbi
 from planner.coverage.sight import MOSTLY_FREE_RATIO
 from planner.physics._jit import scalar
-from planner.physics._lanes import LANES
+from planner.physics._lanes import LANES, borrowed
 from planner.physics.elementary import log10
 from planner.physics.link import eirp_dbm_scalar, received_signal_dbm_scalar
 from planner.sweep.cells import losses, may_meet_sphere
@@ -155,10 +155,12 @@ def walk_heights(
     fan = new_fan(outer, has_obstacles)
     wedge = wedge_of(wedge_number, ground, mast, *ladder.served.shape)
     at = tables_of(outer)
-    narrow, slopes, place = fan.narrow, fan.wide, fan.place
-    bent_ground, surface = fan.ground, fan.surface
-    lids, tables, recalled = fan.lids, fan.tables, fan.recalled
-    flat_ground, flat_obstacle = ground.reshape(ground.size), obstacle.reshape(obstacle.size)
+    narrow, slopes, place = borrowed(fan.narrow), borrowed(fan.wide), borrowed(fan.place)
+    bent_ground, surface = borrowed(fan.ground), borrowed(fan.surface)
+    lids, tables = borrowed(fan.lids), borrowed(fan.tables)
+    recalled = borrowed(fan.recalled)
+    flat_ground = borrowed(ground.reshape(ground.size))
+    flat_obstacle = borrowed(obstacle.reshape(obstacle.size))
     levels, first, nodes_per_row = aim.levels, aim.first, aim.nodes_per_row
     azimuth_places, elevation_places = aim.azimuth_places, aim.elevation_places
     mounted, boresight, budget, bend = aim.mounted, aim.boresight, aim.budget, aim.bend

@@ -273,6 +273,29 @@ def _gather(typing_context: Any, array: Any, start: Any, index: Any) -> Any:
     return kind(array, types.intp, WHOLE), generate
 
 
+@intrinsic
+def _borrowed(typing_context: Any, array: Any) -> Any:
+    def generate(context: Any, builder: Any, signature: Any, values: Any) -> Any:
+        view = context.make_array(array)(context, builder, values[0])
+        view.meminfo = cgutils.get_null_value(view.meminfo.type)
+        view.parent = cgutils.get_null_value(view.parent.type)
+        return view._getvalue()
+
+    return array(array), generate
+
+
+@intrinsic
+def _prefetch(typing_context: Any, array: Any, at: Any) -> Any:
+    def generate(context: Any, builder: Any, signature: Any, values: Any) -> Any:
+        place = _place(context, builder, array, *values)
+        to_read, into_all_caches, data = (ir.Constant(_INT, n) for n in (0, 3, 1))
+        void = ir.VoidType()
+        _call(builder, "llvm.prefetch.p0", void, [place, to_read, into_all_caches, data])
+        return context.get_dummy_value()
+
+    return types.none(array, types.intp), generate
+
+
 def _conversion(wanted: LaneType, given: LaneType) -> str:
     if wanted is WHOLE:
         return "fptosi"
@@ -318,6 +341,12 @@ any_lane: Any = _any_lane  # (mask) -> whether it holds anywhere
 load: Any = _load  # (flat array, first element) -> lanes
 store: Any = _store  # (flat array, first element, lanes)
 gather: Any = _gather  # (flat array, start, whole lanes) -> elements at start + each lane's number
+# (array): the same array, of which references are not counted. Counting takes more time than most
+# of what is called with arrays for each line, and threads that count the same array wait for each
+# other. Whoever borrows must hold the array itself for as long.
+borrowed: Any = _borrowed
+# (flat array, element): have it fetched from memory by the time it is needed.
+prefetch: Any = _prefetch
 whole: Any = _converter(WHOLE)  # towards 0; meaningless outside the range of int32
 single: Any = _converter(SINGLE)
 wide: Any = _converter(WIDE)

@@ -13,6 +13,7 @@ from planner.physics._lanes import (
     lane_numbers,
     load,
     next_lane,
+    prefetch,
     previous_lane,
     single,
     store,
@@ -45,6 +46,8 @@ from planner.sweep.state import (
 )
 
 f4 = np.float32
+LINES_AHEAD = 12
+FETCHED = 16  # numbers that come from memory at a time
 
 
 @scalar
@@ -95,6 +98,29 @@ def start_fan(
         narrow[RX_ABOVE + lane] = link.receiver_height_m
         place[SURFACE_AT + lane] = unused
         surface[unused * LANES + lane] = LOWEST
+
+
+@scalar
+def look_ahead(
+    slopes: NDArray, flat: NDArray, wedge: Wedge, line: int, t: float, course: Course
+) -> None:
+    """Have the raster under a line further on fetched from memory while this one is worked on.
+
+    Along a row: the next line is far away in memory, where no processor expects it. Columns need
+    none, since one fetch brings the following ones.
+    """
+    if wedge.along_rows:
+        return
+    line += LINES_AHEAD * wedge.forward
+    if not 0 <= line <= wedge.last_of_all:
+        return
+    t += LINES_AHEAD
+    first = max(int(wedge.side + slopes[SLOPE] * t), 0)
+    last = min(int(wedge.side + slopes[SLOPE + course.last_lane] * t) + 1, wedge.lateral_last)
+    start = line * wedge.line_stride
+    for place in range(first, last, FETCHED):
+        prefetch(flat, start + place)
+    prefetch(flat, start + max(last, 0))
 
 
 @inlined

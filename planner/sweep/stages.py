@@ -5,7 +5,7 @@ from numpy.typing import NDArray
 from planner.physics._jit import scalar
 from planner.sweep.course import Course
 from planner.sweep.own_line import count_cleared, start_search
-from planner.sweep.sampling_lines import include_sample, raise_horizon, take_sample
+from planner.sweep.sampling_lines import include_sample, look_ahead, raise_horizon, take_sample
 from planner.sweep.search import search_extremes
 from planner.sweep.state import Link, Tables, Wedge
 
@@ -69,6 +69,9 @@ def sample_line(
     t: float,
 ) -> int:
     """Take the samples between the last line and this one; how many there are by now."""
+    look_ahead(slopes, flat_ground, wedge, line, t, course)
+    if flat_obstacle.size > 0:
+        look_ahead(slopes, flat_obstacle, wedge, line, t, course)
     while (taken + 1.0) / course.stretch <= t:
         back = t - (taken + 1.0) / course.stretch
         take_sample(

@@ -11,6 +11,7 @@ mast is what the two radials have, in proportion.
 from numpy.typing import NDArray
 
 from planner.physics._jit import scalar
+from planner.physics._lanes import borrowed
 from planner.sweep.cells import losses, may_meet_sphere, write_cells
 from planner.sweep.course import course_of, new_fan, samples_before, tables_of, wedge_of
 from planner.sweep.curved_earth import add_excess_over_sphere
@@ -35,16 +36,17 @@ def _walk(
     layers: Layers,
 ) -> None:
     """Walk one fan outwards to the ring's outer edge and compute the ring's cells on the way."""
-    # Unpacked once: every look into a tuple of arrays counts a reference, which costs in a loop.
-    narrow, slopes, place = fan.narrow, fan.wide, fan.place
-    bent_ground, surface = fan.ground, fan.surface
-    lids, tables, recalled = fan.lids, fan.tables, fan.recalled
-    flat_ground, flat_obstacle = ground.reshape(ground.size), obstacle.reshape(obstacle.size)
+    narrow, slopes, place = borrowed(fan.narrow), borrowed(fan.wide), borrowed(fan.place)
+    bent_ground, surface = borrowed(fan.ground), borrowed(fan.surface)
+    lids, tables = borrowed(fan.lids), borrowed(fan.tables)
+    recalled = borrowed(fan.recalled)
+    flat_ground = borrowed(ground.reshape(ground.size))
+    flat_obstacle = borrowed(obstacle.reshape(obstacle.size))
     size, cols = layers.status.size, layers.status.shape[1]
-    path_loss = layers.path_loss_db.reshape(size)
-    elevation = layers.departure_elevation_deg.reshape(size)
-    clearance = layers.fresnel_clearance_ratio.reshape(size)
-    status = layers.status.reshape(size)
+    path_loss = borrowed(layers.path_loss_db.reshape(size))
+    elevation = borrowed(layers.departure_elevation_deg.reshape(size))
+    clearance = borrowed(layers.fresnel_clearance_ratio.reshape(size))
+    status = borrowed(layers.status.reshape(size))
     has_obstacles = obstacle.size > 0
     course = course_of(outer, first_radial, inner, has_obstacles, mast, link)
     start_fan(narrow, slopes, place, surface, first_radial, outer, wedge, mast, link, course)
