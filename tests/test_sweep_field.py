@@ -185,22 +185,6 @@ def test_a_hole_spoils_only_itself_and_what_lies_behind_it():
     assert np.isnan(holed.path_loss_db[~same]).all()
 
 
-def test_compiled_sweep_equals_plain_python(monkeypatch):
-    """The kernel as Python, with its helpers compiled, gives the same as the compiled one."""
-    from planner.sweep import field as field_module
-    from planner.sweep import walk
-
-    rng = np.random.default_rng(5)
-    ground = (rng.random((25, 25)) * 40.0).astype(np.float32)
-    terrain = plain(ground=ground)
-    compiled = field_at(terrain, 12.2, 11.6, radius_m=520.0)
-    monkeypatch.setattr(walk, "_walk", walk._walk.py_func)
-    monkeypatch.setattr(field_module, "walk_fan", walk.walk_fan.py_func)
-    interpreted = field_at(terrain, 12.2, 11.6, radius_m=520.0)
-    np.testing.assert_allclose(interpreted.path_loss_db, compiled.path_loss_db, rtol=0, atol=1e-4)
-    np.testing.assert_array_equal(interpreted.status, compiled.status)
-
-
 def test_obstacles_block_but_do_not_lift_the_mast():
     """A wood across the way costs signal behind it; around both ends it does not count."""
     wood = np.zeros((81, 81), dtype=np.float32)

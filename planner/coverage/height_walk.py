@@ -43,8 +43,10 @@ from planner.sweep.state import (
     SPHERE,
     TX_SLOPE,
     WANTED,
+    Fan,
     Link,
     Mast,
+    Tables,
     Wedge,
 )
 
@@ -151,10 +153,28 @@ def walk_heights(
     ladder: Ladder,
 ) -> None:
     """Find the needed heights of one fan's cells, see :func:`planner.sweep.course.fans`."""
-    has_obstacles = obstacle.size > 0
-    fan = new_fan(outer, has_obstacles)
+    fan = new_fan(outer, obstacle.size > 0)
     wedge = wedge_of(wedge_number, ground, mast, *ladder.served.shape)
     at = tables_of(outer)
+    _walk(fan, at, wedge, outer, first_radial, inner, ground, obstacle, mast, link, aim, ladder)
+
+
+@scalar
+def _walk(
+    fan: Fan,
+    at: Tables,
+    wedge: Wedge,
+    outer: int,
+    first_radial: int,
+    inner: int,
+    ground: NDArray,
+    obstacle: NDArray,
+    mast: Mast,
+    link: Link,
+    aim: Aim,
+    ladder: Ladder,
+) -> None:
+    has_obstacles = obstacle.size > 0
     narrow, slopes, place = borrowed(fan.narrow), borrowed(fan.wide), borrowed(fan.place)
     bent_ground, surface = borrowed(fan.ground), borrowed(fan.surface)
     lids, tables = borrowed(fan.lids), borrowed(fan.tables)
