@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 from planner.geodesy import LocalFrame
 from planner.physics.diffraction import Polarization
 from planner.physics.free_space import free_space_loss_db_scalar
-from planner.sweep.setting import Progress, set_up
+from planner.sweep.setting import Progress, filled, set_up
 from planner.sweep.state import (
     COMPUTED,
     LEAST_DISTANCE_M,
@@ -112,10 +112,10 @@ def path_field(
     )
     mast, link, shape = setting.mast, setting.link, setting.shape
     layers = Layers(
-        path_loss_db=np.full(shape, np.nan, dtype=np.float32),
-        departure_elevation_deg=np.full(shape, np.nan, dtype=np.float32),
-        fresnel_clearance_ratio=np.full(shape, np.nan, dtype=np.float32),
-        status=np.full(shape, OUT_OF_RANGE, dtype=np.uint8),
+        path_loss_db=filled(shape, np.nan, np.float32),
+        departure_elevation_deg=filled(shape, np.nan, np.float32),
+        fresnel_clearance_ratio=filled(shape, np.nan, np.float32),
+        status=filled(shape, OUT_OF_RANGE, np.uint8),
     )
     setting.walk_all(walk_fan, (layers,), progress)
     _compute_own_cell(mast, link, setting.ground, layers)

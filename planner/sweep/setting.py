@@ -59,6 +59,20 @@ class Setting:
                 raise
 
 
+def filled(shape: tuple[int, int], value: float, dtype: Any) -> NDArray[Any]:
+    """An array full of one value, by several threads: most of the time is the first touch."""
+    array = np.empty(shape, dtype=dtype)
+
+    def fill(rows: slice) -> None:
+        array[rows] = value
+
+    threads = numba.get_num_threads()
+    step = -(-shape[0] // threads)
+    with ThreadPoolExecutor(threads) as pool:
+        list(pool.map(fill, [slice(row, row + step) for row in range(0, shape[0], step)]))
+    return array
+
+
 def set_up(
     terrain: Terrain,
     *,

@@ -24,7 +24,7 @@ SPACING = 1.0  # cells between radials on a ring's outer circle, at most 1
 # The last samples before a cell lie on the cell's own straight line to the mast, where its exact
 # path has them: an edge close to the receiver matters most, and terrain between two radials is not
 # quite what lies in proportion between them.
-OWN_SAMPLES = 3
+OWN_SAMPLES = 2
 BLOCK = 16  # samples that share one bound
 GROUP = 4  # blocks that share one further bound
 REGION = 16  # blocks that share one more
@@ -142,8 +142,8 @@ TX_SLOPE = 14 * LANES  # steepest bent surface seen from the mast on the way to 
 CELL_GROUND_SLOPE = 15 * LANES  # steepest bare ground, not bent
 PER_METRE = 16 * LANES  # steps per true metre on the way to the cell
 NU_SCALE = 17 * LANES  # by which BEST_NEAR becomes nu
-OWN_SHARE = 18 * LANES  # to 20: own samples' distance from the cell as a share of the whole
-OWN_BENT = 21 * LANES  # to 23: their bent surface
+OWN_SHARE = 18 * LANES  # and 19: own samples' distance from the cell as a share of the whole
+OWN_BENT = 21 * LANES  # and 22: their bent surface
 RX_BENT = 24 * LANES  # receiving antenna, bent
 DIRECT = 25 * LANES  # slope of the ray to it, per step
 BEST_TANGENT = 26 * LANES  # steepest seen from the cell so far
