@@ -20,9 +20,9 @@ LOWEST_GAIN_DBI = -20.0  # common practice, no source: no sector antenna lies ou
 HIGHEST_GAIN_DBI = 60.0
 HIGHEST_TILT_DEG = 45.0  # common practice, no source: either way, mechanical or electrical
 
-# What the levels of a pattern are. "measured": of one antenna, in this direction. "model": a formula
-# that stands for what an antenna radiates in this direction. "envelope": what side lobes stay below
-# or have in the mean, so that the sum over all directions is not the power that is radiated.
+# What the levels of a pattern are. "measured": of one antenna, in this direction. "model": a
+# formula that stands for what an antenna radiates in this direction. "envelope": what side lobes
+# stay below or have in the mean, so that their sum is not the power that is radiated.
 PatternKind = Literal["measured", "model", "envelope"]
 
 # Directivity of a beam that fills its half-power rectangle evenly, in square degrees:

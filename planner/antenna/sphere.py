@@ -90,9 +90,7 @@ def sphere_mean(gain: Gain, name: str) -> SphereMean:
         done_error += float(error[left].sum())
         if split.size == 0:
             break
-        west, south, width, height = (
-            values.reshape(4, -1)[:, split].ravel() for values in halves
-        )
+        west, south, width, height = (values.reshape(4, -1)[:, split].ravel() for values in halves)
         whole = parts[:, split].ravel()
     else:
         done += float(whole.sum())

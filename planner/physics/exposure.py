@@ -101,9 +101,7 @@ def limit_distance(
         size_m = radiator.largest_dimension_m
         reactive_m = max(reactive_m, reactive_near_field_m_scalar(size_m, wavelength_m))
         eirp_w = radiator.power_w * 10.0 ** (radiator.gain_dbi / 10.0)
-        far_squared += (
-            GROUND_REFLECTION_POWER_FACTOR * part * eirp_w / (4.0 * math.pi * limit_w_m2)
-        )
+        far_squared += GROUND_REFLECTION_POWER_FACTOR * part * eirp_w / (4.0 * math.pi * limit_w_m2)
         if radiator.shape == "column":
             spread = radiator.azimuth_beamwidth_deg / 180.0 * math.pi * size_m
             columns += part * radiator.power_w / spread / limit_w_m2

@@ -27,23 +27,29 @@ _DISH_RATIO, _WIDEST_DISH_DEG = 2.0, 40.0
 _AZIMUTH_STEP_DEG, _ELEVATION_STEP_DEG = 1.0, 0.25
 
 
-def exposure_record(mast: Sequence[MountedAntenna]) -> dict[str, Any] | str:
-    """Distances to every published limit, ready for JSON; or in words what is missing for them."""
+def exposure_record(mast: Sequence[MountedAntenna]) -> dict[str, Any]:
+    """Distances to every published limit, ready for JSON.
+
+    ``reason`` says what is missing where nothing could be computed, and nothing else stands there.
+    """
     for key in ("transmit_power_dbm", "frequency_mhz", "largest_dimension_m"):
         lacking = [antenna.label for antenna in mast if getattr(antenna, key) is None]
         if lacking:
-            return f"not computed: no {key} of {', '.join(lacking)}"
+            return {"reason": f"no {key} of {', '.join(lacking)}"}
     radiators = [_radiator(antenna) for antenna in mast]
     azimuths = _azimuths(mast)
     share = np.array([_share(antenna, azimuths) for antenna in mast])
     aimed = mast[0].azimuth_deg is not None
     return {
+        "reason": "",
         "antennas": [antenna.label for antenna in mast],
         "power_w": round(float(sum(radiator.power_w for radiator in radiators)), 6),
         "shapes": [radiator.shape for radiator in radiators],
         "ground_reflection_power_factor": GROUND_REFLECTION_POWER_FACTOR,
         "limits": [
-            _limit_record(limit, radiators, limit_distance(radiators, share, limit), azimuths, aimed)
+            _limit_record(
+                limit, radiators, limit_distance(radiators, share, limit), azimuths, aimed
+            )
             for limit in EXPOSURE_LIMITS
         ],
         "caution": CAUTION,
@@ -84,10 +90,10 @@ def _limit_record(
 def _radiator(antenna: MountedAntenna) -> Radiator:
     size_m, frequency_mhz = antenna.largest_dimension_m, antenna.frequency_mhz
     if antenna.power_dbm is None or size_m is None or frequency_mhz is None:
-        raise AssertionError(f"{antenna.label} has passed the checks without power, size, frequency")
-    figures = key_figures(
-        antenna.pattern, electrical_downtilt_deg=antenna.electrical_downtilt_deg
-    )
+        raise AssertionError(
+            f"{antenna.label} has passed the checks without power, size, frequency"
+        )
+    figures = key_figures(antenna.pattern, electrical_downtilt_deg=antenna.electrical_downtilt_deg)
     width_deg = figures.azimuth.half_power_beamwidth_deg
     return Radiator(
         frequency_mhz=frequency_mhz,

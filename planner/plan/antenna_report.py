@@ -181,22 +181,21 @@ def _warnings(
     pattern = study.antenna.pattern
     warnings = list(pattern.notes)
     over_db = figures.gain_above_directivity_db
+    gain, directivity = f"{figures.peak_gain_dbi:.1f} dBi", f"{figures.directivity_dbi:.1f} dBi"
     if figures.gain_verdict == "impossible":
         warnings.append(
-            f"The gain of {figures.peak_gain_dbi:.1f} dBi is {over_db:.1f} dB above the directivity "
-            f"of this pattern, {figures.directivity_dbi:.1f} dBi: it would radiate more power than "
-            "is put in. Gain or pattern is wrong."
+            f"The gain of {gain} is {over_db:.1f} dB above the directivity of this pattern, "
+            f"{directivity}: it would radiate more power than is put in. Gain or pattern is wrong."
         )
     elif pattern.kind == "measured" and (figures.efficiency or 1.0) < LOW_EFFICIENCY:
         warnings.append(
-            f"The gain of {figures.peak_gain_dbi:.1f} dBi is {-over_db:.1f} dB below the directivity "
-            f"of this pattern, {figures.directivity_dbi:.1f} dBi: few antennas lose so much. Check "
-            "the gain, its unit and that the pattern belongs to it."
+            f"The gain of {gain} is {-over_db:.1f} dB below the directivity of this pattern, "
+            f"{directivity}: few antennas lose so much. Check the gain, its unit and that the "
+            "pattern belongs to it."
         )
     if abs(figures.peak_gain_dbi - pattern.gain_dbi) > 0.1:
         warnings.append(
-            f"The highest gain of the pattern is {figures.peak_gain_dbi:.1f} dBi, not the stated "
-            f"{pattern.gain_dbi:g} dBi."
+            f"The highest gain of the pattern is {gain}, not the stated {pattern.gain_dbi:g} dBi."
         )
     if regions is not None:
         reach_m = regions["far_field_m"]

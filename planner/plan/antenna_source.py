@@ -20,9 +20,7 @@ from planner.plan.shown import nearest, shown
 _VSWR = Field(ge=1.0, le=100.0, allow_inf_nan=False, description="1 to 100")
 _RADIO_KEYS = ("frequency_mhz", "transmit_power_dbm", "feeder_loss_db")
 _OF_THE_ANTENNA = {
-    key: field
-    for key, field in AntennaTable.model_fields.items()
-    if key not in ("formula", "file")
+    key: field for key, field in AntennaTable.model_fields.items() if key not in ("formula", "file")
 }
 # Every key that --set takes; all but vswr are named as in the plan file and have its ranges.
 SETTABLE: Mapping[str, FieldInfo] = {
@@ -91,7 +89,7 @@ def settings_from(pairs: Sequence[str]) -> dict[str, Any]:
         where = f"--set {key}"
         if key in settings:
             problems.append(Problem(where=where, found="two values", allowed="one"))
-        kind: Any = Annotated[field.annotation, *field.metadata]  # type: ignore[valid-type]
+        kind: Any = Annotated[field.annotation, *field.metadata]
         try:
             settings[key] = TypeAdapter(kind).validate_python(text.strip())
         except ValidationError:
@@ -166,14 +164,7 @@ def _from_settings(source: str, settings: Mapping[str, Any]) -> StudiedAntenna:
         raise InputError(problems)
     if formula is not None:
         name = formula
-        try:
-            pattern = formula_pattern(name, formula, frequency_mhz=float(frequency_mhz), **own)
-        except PatternError as error:
-            start = f"antenna.{name}."
-            raise InputError(
-                replace(problem, where=f"--set {problem.where.removeprefix(start)}")
-                for problem in error.problems
-            ) from None
+        pattern = _formula_pattern(formula, settings["frequency_mhz"], own)
     else:
         name = Path(source).name
         pattern = read_two_cut_csv(Path(source), name=name, gain_dbi=own["gain_dbi"])
@@ -196,14 +187,22 @@ def _from_settings(source: str, settings: Mapping[str, Any]) -> StudiedAntenna:
     )
 
 
+def _formula_pattern(formula: str, frequency_mhz: float, own: Mapping[str, Any]) -> Pattern:
+    try:
+        return formula_pattern(formula, formula, frequency_mhz=frequency_mhz, **own)
+    except PatternError as error:
+        raise InputError(
+            replace(problem, where=f"--set {problem.where.removeprefix(f'antenna.{formula}.')}")
+            for problem in error.problems
+        ) from None
+
+
 def _missing(key: str, example: str) -> Problem:
     allowed = f"{SETTABLE[key].description}: --set {example}"
     return Problem(where=f"--set {key}", found="nothing", allowed=allowed)
 
 
-def _from_plan(
-    path: Path, settings: Mapping[str, Any], sector_id: str | None
-) -> StudiedAntenna:
+def _from_plan(path: Path, settings: Mapping[str, Any], sector_id: str | None) -> StudiedAntenna:
     strange = [key for key in settings if key not in _BESIDE_A_PLAN]
     if strange:
         raise InputError(
