@@ -63,7 +63,7 @@ def side_lobes(side: Side, reach_deg: float) -> tuple[Lobe, ...]:
         if not rising:
             if levels[at] < levels[null]:
                 null = at
-            elif levels[at] >= levels[null] + LOBE_RISE_DB:
+            elif levels[at] > levels[null] and levels[at] >= levels[null] + LOBE_RISE_DB:
                 rising, crest = True, at
         elif levels[at] > levels[crest]:
             crest = at

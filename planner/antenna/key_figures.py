@@ -60,15 +60,21 @@ class CutFigures:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class KeyFigures:
-    """What a pattern does; angles in the antenna's own frame."""
+class BeamFigures:
+    """Peak of a pattern and the cuts through it; angles in the antenna's own frame."""
 
-    kind: PatternKind
     peak_gain_dbi: float
     peak_azimuth_offset_deg: float  # clockwise from the boresight
     peak_elevation_deg: float  # positive upwards
     azimuth: CutFigures  # at the peak's elevation, all around
     elevation: CutFigures  # at the peak's azimuth, from nadir to zenith
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class KeyFigures(BeamFigures):
+    """What a pattern does; angles in the antenna's own frame."""
+
+    kind: PatternKind
     front_to_back_db: float  # at 180 degrees from the peak in the azimuth cut; may be infinite
     front_to_back_region_db: float  # the least over 180 - 30 to 180 + 30 degrees
     directivity_dbi: float
@@ -136,9 +142,36 @@ def key_figures(pattern: Pattern, *, electrical_downtilt_deg: float = 0.0) -> Ke
     """
     gain: Gain = partial(pattern.gain, electrical_downtilt_deg=electrical_downtilt_deg)
     mean = sphere_mean(gain, pattern.name)
+    beam = beam_figures(pattern, electrical_downtilt_deg=electrical_downtilt_deg)
+    directivity_dbi = beam.peak_gain_dbi - 10.0 * math.log10(mean.ratio)
+    back = 180.0 + np.arange(-BACK_REGION_DEG, BACK_REGION_DEG + STEP_DEG, STEP_DEG)
+    levels = gain(beam.peak_azimuth_offset_deg + back, beam.peak_elevation_deg)
+    straight_back = gain(beam.peak_azimuth_offset_deg + 180.0, beam.peak_elevation_deg)
+    verdict: Verdict = "possible"
+    if pattern.kind == "envelope":
+        verdict = "not judged"
+    elif beam.peak_gain_dbi - directivity_dbi > GAIN_TOLERANCE_DB + mean.error_db:
+        verdict = "impossible"
+    return KeyFigures(
+        kind=pattern.kind,
+        peak_gain_dbi=beam.peak_gain_dbi,
+        peak_azimuth_offset_deg=beam.peak_azimuth_offset_deg,
+        peak_elevation_deg=beam.peak_elevation_deg,
+        azimuth=beam.azimuth,
+        elevation=beam.elevation,
+        front_to_back_db=beam.peak_gain_dbi - float(straight_back),
+        front_to_back_region_db=beam.peak_gain_dbi - float(levels.max()),
+        directivity_dbi=directivity_dbi,
+        directivity_error_db=mean.error_db,
+        gain_verdict=verdict,
+    )
+
+
+def beam_figures(pattern: Pattern, *, electrical_downtilt_deg: float = 0.0) -> BeamFigures:
+    """The part of :func:`key_figures` that needs no integral."""
+    gain: Gain = partial(pattern.gain, electrical_downtilt_deg=electrical_downtilt_deg)
     azimuth_deg, elevation_deg = _middle_of_peak(gain, *peak_direction_deg(gain))
     peak_dbi = float(gain(azimuth_deg, elevation_deg))
-    directivity_dbi = peak_dbi - 10.0 * math.log10(mean.ratio)
 
     def along_azimuth(sign: float) -> Side:
         return lambda away: gain(azimuth_deg + sign * away, elevation_deg) - peak_dbi
@@ -146,15 +179,7 @@ def key_figures(pattern: Pattern, *, electrical_downtilt_deg: float = 0.0) -> Ke
     def along_elevation(sign: float) -> Side:
         return lambda away: gain(azimuth_deg, elevation_deg + sign * away) - peak_dbi
 
-    back = np.arange(-BACK_REGION_DEG, BACK_REGION_DEG + STEP_DEG, STEP_DEG)
-    behind = peak_dbi - gain(azimuth_deg + 180.0 + back, elevation_deg)
-    verdict: Verdict = "possible"
-    if pattern.kind == "envelope":
-        verdict = "not judged"
-    elif peak_dbi - directivity_dbi > GAIN_TOLERANCE_DB + mean.error_db:
-        verdict = "impossible"
-    return KeyFigures(
-        kind=pattern.kind,
+    return BeamFigures(
         peak_gain_dbi=peak_dbi,
         peak_azimuth_offset_deg=azimuth_deg,
         peak_elevation_deg=elevation_deg,
@@ -166,11 +191,6 @@ def key_figures(pattern: Pattern, *, electrical_downtilt_deg: float = 0.0) -> Ke
             along_elevation(1.0),
             90.0 - elevation_deg,
         ),
-        front_to_back_db=peak_dbi - float(gain(azimuth_deg + 180.0, elevation_deg)),
-        front_to_back_region_db=float(behind.min()),
-        directivity_dbi=directivity_dbi,
-        directivity_error_db=mean.error_db,
-        gain_verdict=verdict,
     )
 
 

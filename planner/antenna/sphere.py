@@ -12,7 +12,7 @@ from planner.errors import PatternError, Problem
 Gain = Callable[[ArrayLike, ArrayLike], NDArray[np.float64]]  # of azimuth offset and elevation
 Angles = NDArray[np.float64]
 
-WANTED_SHARE = 2e-5  # of the mean, as its error: 0.0001 dB
+WANTED_SHARE = 1e-4  # of the mean, as its error: 0.0004 dB
 _COARSE_CELL_DEG = 4.0  # halves come to whole degrees, where measured patterns have their corners
 _MOST_ROUNDS = 14  # of halving: cells of less than a thousandth of a degree
 _MOST_CELLS = 100_000  # of one round, each with 36 directions
@@ -60,7 +60,7 @@ def sphere_mean(gain: Gain, name: str) -> SphereMean:
     .. math:: \bar g = \frac{1}{4 \pi} \int\!\!\int 10^{G/10} \cos\theta \, d\varphi \, d\theta
 
     Cells of 4 degrees, each with nine Gauss points, are halved both ways where the halves tell
-    another integral than the whole, until all differences together are below 2e-5 of the mean. The
+    another integral than the whole, until all differences together are below 1e-4 of the mean. The
     error stated is the sum of the differences: that of the wholes, though the halves are used.
     """
     grid = np.meshgrid(
@@ -79,7 +79,8 @@ def sphere_mean(gain: Gain, name: str) -> SphereMean:
         error = np.abs(parts.sum(axis=0) - whole)
         total = done + float(parts.sum())
         order = np.argsort(error)
-        allowed = WANTED_SHARE * total - done_error
+        # Where too many cells were left as they are, the rest need not be much better.
+        allowed = max(WANTED_SHARE * total, 2.0 * done_error) - done_error
         # The cells with the smallest errors are left as they are, the rest is halved.
         kept = int(np.searchsorted(np.cumsum(error[order]), 0.5 * allowed, side="right"))
         kept = max(kept, order.size - _MOST_CELLS // 4)

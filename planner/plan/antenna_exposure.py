@@ -7,7 +7,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from planner.antenna import mounted_gain_dbi
-from planner.antenna.key_figures import KeyFigures, key_figures
+from planner.antenna.key_figures import BeamFigures, beam_figures
 from planner.physics.exposure import (
     GROUND_REFLECTION_POWER_FACTOR,
     LimitDistance,
@@ -93,7 +93,7 @@ def _radiator(antenna: MountedAntenna) -> Radiator:
         raise AssertionError(
             f"{antenna.label} has passed the checks without power, size, frequency"
         )
-    figures = key_figures(antenna.pattern, electrical_downtilt_deg=antenna.electrical_downtilt_deg)
+    figures = beam_figures(antenna.pattern, electrical_downtilt_deg=antenna.electrical_downtilt_deg)
     width_deg = figures.azimuth.half_power_beamwidth_deg
     return Radiator(
         frequency_mhz=frequency_mhz,
@@ -105,7 +105,7 @@ def _radiator(antenna: MountedAntenna) -> Radiator:
     )
 
 
-def _is_dish(figures: KeyFigures) -> bool:
+def _is_dish(figures: BeamFigures) -> bool:
     """Whether the beam is that of a round aperture: narrow, and about as wide as it is high."""
     width_deg = figures.azimuth.half_power_beamwidth_deg
     height_deg = figures.elevation.half_power_beamwidth_deg
