@@ -176,7 +176,8 @@ def _ground_rows(ground: dict[str, Any] | None) -> list[tuple[str, str]]:
             "flat ground",
             f"antenna {ground['antenna_height_m']:g} m up, downtilt "
             f"{ground['mechanical_downtilt_deg']:g} deg mechanical, "
-            f"{ground['electrical_downtilt_deg']:g} deg electrical",
+            f"{ground['electrical_downtilt_deg']:g} deg electrical; in the azimuth of the highest "
+            f"gain, {ground['azimuth_offset_deg']:g} deg from the boresight",
         ),
         ("  main beam lands at", _ring(ground["main_beam"])),
         ("  upper 3 dB edge", _ring(ground["upper_half_power_edge"])),

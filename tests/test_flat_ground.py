@@ -63,6 +63,24 @@ def test_nulls_of_a_line_source():
         assert ring.distance_m == pytest.approx(height / math.tan(math.radians(angle)), rel=1e-3)
 
 
+def test_an_antenna_that_points_aside():
+    """The ground is looked at where the beam is, turned by the tilt: 30 deg to the right and 9 deg
+    down by itself, the mast tilted by 4 deg more about the boresight's cross axis."""
+    pattern = Analytic(intensity=cosine_power(5000, azimuth_deg=30.0, elevation_deg=-9.0))
+    rings = flat_ground_rings(pattern, antenna_height_m=30.0, mechanical_downtilt_deg=4.0)
+    azimuth, elevation, tilt = (math.radians(angle) for angle in (30.0, -9.0, 4.0))
+    ahead, up = math.cos(elevation) * math.cos(azimuth), math.sin(elevation)
+    right = math.cos(elevation) * math.sin(azimuth)
+    ahead, up = (
+        ahead * math.cos(tilt) + up * math.sin(tilt),
+        up * math.cos(tilt) - ahead * math.sin(tilt),
+    )
+    assert rings.azimuth_offset_deg == pytest.approx(
+        math.degrees(math.atan2(right, ahead)), abs=1e-3
+    )
+    assert rings.main_beam.elevation_deg == pytest.approx(math.degrees(math.asin(up)), abs=1e-3)
+
+
 def test_a_null_between_beam_and_horizon_counts():
     """A beam tilted by 20 degrees: its upper nulls lie on the ground beyond the main beam."""
     rings = flat_ground_rings(

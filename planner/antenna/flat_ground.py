@@ -1,4 +1,4 @@
-"""Where the beam of a mounted antenna meets flat ground, on the azimuth of its boresight.
+"""Where the beam of a mounted antenna meets flat ground, in the azimuth of its highest gain.
 
 The ground is level and without curvature, at the foot of the mast; nothing is reflected.
 """
@@ -12,6 +12,7 @@ from numpy.typing import ArrayLike, NDArray
 from planner.antenna.cuts import STEP_DEG, Side, half_power_distance_deg, side_lobes
 from planner.antenna.mounting import mounted_gain_dbi
 from planner.antenna.pattern import Pattern
+from planner.antenna.sphere import peak_direction_deg
 from planner.errors import PatternError, Problem
 
 HEIGHTS_M = 0.5, 1000.0
@@ -30,6 +31,7 @@ class Ring:
 class FlatGroundRings:
     """Rings on the ground; an edge is None where the gain does not fall by 3 dB on that side."""
 
+    azimuth_offset_deg: float  # of the highest gain, clockwise from the boresight
     main_beam: Ring
     upper_edge: Ring | None  # 3 dB below the peak, above the main beam
     lower_edge: Ring | None  # and below it: nearer to the mast
@@ -64,15 +66,20 @@ def flat_ground_rings(
             Problem(where="antenna_height_m", found=f"{antenna_height_m:g}", allowed=allowed)
         )
 
-    def gain(elevation_deg: ArrayLike) -> NDArray[np.float64]:
+    def mounted(azimuth_offset_deg: ArrayLike, elevation_deg: ArrayLike) -> NDArray[np.float64]:
         return mounted_gain_dbi(
             pattern,
-            true_azimuth_deg=0.0,
+            true_azimuth_deg=azimuth_offset_deg,
             elevation_deg=elevation_deg,
             azimuth_deg=0.0,
             mechanical_downtilt_deg=mechanical_downtilt_deg,
             electrical_downtilt_deg=electrical_downtilt_deg,
         )
+
+    azimuth_deg, _ = peak_direction_deg(mounted)
+
+    def gain(elevation_deg: ArrayLike) -> NDArray[np.float64]:
+        return mounted(azimuth_deg, elevation_deg)
 
     def ring(elevation_deg: float) -> Ring:
         return Ring(
@@ -102,6 +109,7 @@ def flat_ground_rings(
         nulls += [ring(peak_deg + sign * lobe.null_deg) for lobe in side_lobes(side, reach_deg)]
     meeting = [null for null in nulls if null.distance_m is not None]
     return FlatGroundRings(
+        azimuth_offset_deg=azimuth_deg,
         main_beam=ring(peak_deg),
         upper_edge=edges[1],
         lower_edge=edges[0],

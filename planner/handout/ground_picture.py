@@ -109,6 +109,7 @@ def ground_figure(
     distance_m = _distances(rings, antenna_height_m)
     density_dbm_m2 = _power_density_dbm_m2(
         pattern,
+        rings.azimuth_offset_deg,
         distance_m,
         antenna_height_m=antenna_height_m,
         mechanical_downtilt_deg=mechanical_downtilt_deg,
@@ -151,6 +152,7 @@ def _distances(rings: FlatGroundRings, antenna_height_m: float) -> NDArray[np.fl
 
 def _power_density_dbm_m2(
     pattern: Pattern,
+    azimuth_offset_deg: float,
     distance_m: NDArray[np.float64],
     *,
     antenna_height_m: float,
@@ -160,7 +162,7 @@ def _power_density_dbm_m2(
 ) -> NDArray[np.float64]:
     gain_dbi = mounted_gain_dbi(
         pattern,
-        true_azimuth_deg=0.0,
+        true_azimuth_deg=azimuth_offset_deg,
         elevation_deg=-np.degrees(np.arctan2(antenna_height_m, distance_m)),
         azimuth_deg=0.0,
         mechanical_downtilt_deg=mechanical_downtilt_deg,
@@ -271,7 +273,10 @@ def _name_ring(
 
 def _write_foot(figure: Figure, axes: Axes, rings: FlatGroundRings) -> None:
     middle = 0.5 * (_LEFT + _RIGHT)
-    text = "m from the mast along flat ground, in the boresight's azimuth"
+    towards = with_minus(f"{round(rings.azimuth_offset_deg, 1) + 0.0:g}")
+    text = f"m from the mast along flat ground, {towards}° clockwise from the boresight"
+    if towards == "0":
+        text = "m from the mast along flat ground, in the boresight's azimuth"
     write(figure, middle, 792, text, SMALL_PT, colour=QUIET, align="center")
     figure.text(
         36 / WIDTH_PX, 1.0 - 0.5 * (_TOP + _BOTTOM) / HEIGHT_PX, "power density, dBm/m²",

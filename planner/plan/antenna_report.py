@@ -158,6 +158,7 @@ def _flat_ground(study: StudiedAntenna, rings: FlatGroundRings) -> dict[str, Any
         "antenna_height_m": study.antenna_height_m,
         "mechanical_downtilt_deg": study.antenna.mechanical_downtilt_deg,
         "electrical_downtilt_deg": study.antenna.electrical_downtilt_deg,
+        "azimuth_offset_deg": _number(rings.azimuth_offset_deg, 1),
         "main_beam": _ring(rings.main_beam),
         "upper_half_power_edge": _ring(rings.upper_edge),
         "lower_half_power_edge": _ring(rings.lower_edge),

@@ -27,7 +27,7 @@ def input_files(plan: Plan) -> list[Path]:
     return [path for path in files if path is not None]
 
 
-def _near_field_warnings(plan: Plan, answers: tuple[CustomerAnswer, ...]) -> list[str]:
+def near_field_warnings(plan: Plan, answers: tuple[CustomerAnswer, ...]) -> list[str]:
     """Customers that stand where the pattern of their sector's antenna does not hold yet."""
     warnings = []
     for sector in plan.sectors:
@@ -72,7 +72,7 @@ def run_record(
         f"{excess.limit_dbm:.1f} dBm"
         for excess in excesses
     ]
-    warnings += _near_field_warnings(plan, answers)
+    warnings += near_field_warnings(plan, answers)
     grid = terrain.grid
     return {
         "software": f"ptmp-planner {__version__}",
