@@ -170,7 +170,8 @@ def _limit(limit: dict[str, Any]) -> str:
 def _ground_rows(ground: dict[str, Any] | None) -> list[tuple[str, str]]:
     if ground is None:
         return []
-    nulls = ", ".join(f"{null['distance_m']:.0f}" for null in ground["nulls"])
+    distances = [null["distance_m"] for null in ground["nulls"]]
+    nulls = ", ".join(f"{d:.0f}" if d >= 10.0 else f"{d:.1f}" for d in distances)
     return [
         (
             "flat ground",

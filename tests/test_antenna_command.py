@@ -9,7 +9,9 @@ import pytest
 from command_line import planner
 from plans import PLAN, write_plan
 
+from planner.antenna.key_figures import key_figures
 from planner.customers import CustomerAnswer
+from planner.io.pattern_files import read_two_cut_csv
 from planner.network import Customer
 from planner.plan import read_plan
 from planner.plan.record import near_field_warnings
@@ -83,6 +85,33 @@ def test_figures_of_a_file(monkeypatch, capsys):
     assert public["distance_m"] == public["reactive_near_field_m"] == pytest.approx(1.26, abs=0.01)
     assert "no compliance certificate" in record["exposure"]["caution"]
     assert any("Within 11.8 m" in warning for warning in record["warnings"])
+
+
+def test_every_figure_is_in_its_place(tmp_path, monkeypatch, capsys):
+    """A lopsided antenna, so that no two figures are alike: the record against the figures."""
+    angles = [-180, -150, -120, -90, -60, -30, 0, 10, 40, 70, 100, 130, 160]
+    levels = [-31, -24, -28, -20, -26, -7, -0.5, 0, -5, -17, -33, -21, -35]
+    vertical = [(-90, -30), (-60, -25), (-30, -32), (-12, -14), (-8, -25), (-5, -6), (-3, 0),
+                (0, -3.5), (4, -20), (9, -17), (30, -25), (60, -26), (90, -30)]  # fmt: skip
+    rows = [f"h,{a},{level}" for a, level in zip(angles, levels, strict=True)]
+    rows += [f"v,{a},{level}" for a, level in vertical]
+    file = tmp_path / "lopsided.csv"
+    file.write_text("\n".join(("cut,angle_deg,level_db", *rows)) + "\n", encoding="utf-8")
+    found = record_of(monkeypatch, capsys, file, "--set", "gain_dbi=12")["figures"]
+    figures = key_figures(read_two_cut_csv(file, name="x", gain_dbi=12.0))
+    for key in ("squint_deg", "front_to_back_db", "front_to_back_region_db", "efficiency",
+                "directivity_dbi", "gain_above_directivity_db", "peak_azimuth_offset_deg",
+                "peak_elevation_deg", "electrical_downtilt_found_deg"):  # fmt: skip
+        assert found[key] == pytest.approx(getattr(figures, key), abs=0.0501), key
+    for name in ("azimuth", "elevation"):
+        cut = getattr(figures, name)
+        for key in ("half_power_beamwidth_deg", "first_null_beamwidth_deg", "side_lobe_level_db"):
+            assert found[name][key] == pytest.approx(getattr(cut, key), abs=0.0501), key
+        for side in ("lower", "upper"):
+            lobe_db = getattr(cut, side)[0].peak_db
+            assert found[name][f"first_{side}_side_lobe_db"] == pytest.approx(lobe_db, abs=0.0501)
+    numbers = [value for value in found.values() if isinstance(value, float)]
+    assert len(set(numbers)) >= len(numbers) - 1  # the tilt found is the peak's elevation
 
 
 def test_an_inconsistent_gain_is_called_out(monkeypatch, capsys):

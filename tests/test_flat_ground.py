@@ -81,6 +81,18 @@ def test_an_antenna_that_points_aside():
     assert rings.main_beam.elevation_deg == pytest.approx(math.degrees(math.asin(up)), abs=1e-3)
 
 
+def test_an_antenna_that_radiates_all_around_is_looked_at_along_its_boresight():
+    """Tilted up by 9.5 degrees, its ring of highest gain is so in front."""
+    rings = flat_ground_rings(
+        Analytic(intensity=line_source(10.0)),
+        antenna_height_m=30.0,
+        mechanical_downtilt_deg=-9.5,
+        electrical_downtilt_deg=2.25,
+    )
+    assert rings.azimuth_offset_deg == pytest.approx(0.0, abs=1e-9)
+    assert rings.main_beam.elevation_deg == pytest.approx(7.25, abs=1e-3)
+
+
 def test_a_null_between_beam_and_horizon_counts():
     """A beam tilted by 20 degrees: its upper nulls lie on the ground beyond the main beam."""
     rings = flat_ground_rings(

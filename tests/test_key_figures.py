@@ -181,6 +181,22 @@ def test_a_lopsided_measured_pattern():
     assert more.electrical_downtilt_found_deg == pytest.approx(5.0, abs=1e-3)
 
 
+def test_a_dip_in_the_main_beam_is_no_null():
+    """Two humps with 1.5 dB between them are one beam; beyond it there is no lobe."""
+    pattern = two_cut_pattern(
+        name="panel",
+        gain_dbi=15.0,
+        horizontal_angle_deg=[-180, -150, -120, -90, -60, -30, 0, 30, 60, 90, 120, 150],
+        horizontal_level_db=[-30, -30, -29, -15, -4, 0, -1.5, -0.1, -4, -15, -29, -30],
+        vertical_angle_deg=[-90, -60, -30, 0, 30, 60, 90],
+        vertical_level_db=[-30, -25, -20, 0, -20, -25, -30],
+    )
+    figures = key_figures(pattern)
+    right = 30.0 + 30.0 * 2.9 / 3.9
+    assert figures.azimuth.half_power_edges_deg == pytest.approx((-52.5, right), abs=1e-6)
+    assert (figures.azimuth.lower, figures.azimuth.upper) == ((), ())
+
+
 def test_the_demo_panel_s_lobes_are_those_of_its_file():
     """Points of the file: first lobes -13.14 dB at 10 deg, back lobe -22.5 dB."""
     figures = key_figures(read_two_cut_csv(PANEL, name="panel", gain_dbi=17.0))

@@ -10,9 +10,9 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from planner.antenna.cuts import STEP_DEG, Side, half_power_distance_deg, side_lobes
-from planner.antenna.mounting import mounted_gain_dbi
+from planner.antenna.key_figures import beam_figures
+from planner.antenna.mounting import antenna_direction_deg, checked_tilt, mounted_gain_dbi
 from planner.antenna.pattern import Pattern
-from planner.antenna.sphere import peak_direction_deg
 from planner.errors import PatternError, Problem
 
 HEIGHTS_M = 0.5, 1000.0
@@ -66,20 +66,24 @@ def flat_ground_rings(
             Problem(where="antenna_height_m", found=f"{antenna_height_m:g}", allowed=allowed)
         )
 
-    def mounted(azimuth_offset_deg: ArrayLike, elevation_deg: ArrayLike) -> NDArray[np.float64]:
+    beam = beam_figures(pattern, electrical_downtilt_deg=electrical_downtilt_deg)
+    checked_tilt(mechanical_downtilt_deg)
+    turned, _ = antenna_direction_deg(  # back, from the antenna's frame to the true one
+        beam.peak_azimuth_offset_deg,
+        beam.peak_elevation_deg,
+        mechanical_downtilt_deg=-mechanical_downtilt_deg,
+    )
+    azimuth_deg = float(turned)
+
+    def gain(elevation_deg: ArrayLike) -> NDArray[np.float64]:
         return mounted_gain_dbi(
             pattern,
-            true_azimuth_deg=azimuth_offset_deg,
+            true_azimuth_deg=azimuth_deg,
             elevation_deg=elevation_deg,
             azimuth_deg=0.0,
             mechanical_downtilt_deg=mechanical_downtilt_deg,
             electrical_downtilt_deg=electrical_downtilt_deg,
         )
-
-    azimuth_deg, _ = peak_direction_deg(mounted)
-
-    def gain(elevation_deg: ArrayLike) -> NDArray[np.float64]:
-        return mounted(azimuth_deg, elevation_deg)
 
     def ring(elevation_deg: float) -> Ring:
         return Ring(

@@ -45,6 +45,7 @@ WIDTH_PX, HEIGHT_PX, DPI = 1504, 896, 150
 WITHOUT_POWER_DBM = 30.0  # 1 W, where no transmit power is given; the picture says so
 FARTHEST_M = 30_000.0  # beyond, the curve of the earth is no longer a detail
 _DEPTH_DB = 60.0
+_MOST_NULLS_NAMED = 14
 _LEFT, _RIGHT, _TOP, _BOTTOM = 104, 1464, 256, 736  # of the drawing, from the top left
 _BEAM = SIGNAL_RAMP[0]
 _CURVE = SIGNAL_RAMP[-2]
@@ -283,10 +284,13 @@ def _write_foot(figure: Figure, axes: Axes, rings: FlatGroundRings) -> None:
         fontproperties=font(SMALL_PT), color=QUIET, rotation=90.0,
         horizontalalignment="center", verticalalignment="center",
     )  # fmt: skip
-    low = axes.get_xlim()[0]
+    low, high = axes.get_xlim()
     distances = [ring.distance_m for ring in rings.nulls if ring.distance_m is not None]
-    named = [f"{distance:,.0f}" for distance in distances if distance >= low]
-    text = f"dotted: nulls at {', '.join(named)} m" if named else "no nulls on the ground"
+    drawn = [distance for distance in distances if low <= distance <= high]
+    named = ", ".join(f"{d:,.0f}" if d >= 10.0 else f"{d:.1f}" for d in drawn[:_MOST_NULLS_NAMED])
+    text = f"dotted: nulls at {named} m" if drawn else "no nulls on the ground drawn"
+    if len(drawn) > _MOST_NULLS_NAMED:
+        text += f" and {len(drawn) - _MOST_NULLS_NAMED} farther out"
     fit(figure, write(figure, _LEFT, 826, text, SMALL_PT, colour=QUIET), _RIGHT - _LEFT)
     text = "free space without reflection; ground and earth taken to be flat"
     if _beam_on_ground(axes, rings) is not None:
