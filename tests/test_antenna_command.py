@@ -180,6 +180,7 @@ WRONG = {
         ("panel.csv", "--set", "gain_dbi=17"),
         ["panel.csv: found no such file; allowed: a pattern file, a plan file (.toml) or a"],
     ),
+    "a name that no file can have": (("x" * 5000, "--set", "gain_dbi=17"), ["found no such file"]),
     "sector without a plan": (
         (PANEL, "--set", "gain_dbi=17", "--sector", "a"),
         ['--sector: found "a"; allowed: only beside a plan file'],

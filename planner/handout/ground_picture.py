@@ -141,14 +141,14 @@ def ground_figure(
 
 def _distances(rings: FlatGroundRings, antenna_height_m: float) -> NDArray[np.float64]:
     """Places drawn, evenly over the logarithm: from near the mast's foot to beyond the rings."""
-    farthest_m = 20.0 * antenna_height_m
+    farthest_m = max(20.0 * antenna_height_m, 500.0)
     for ring, factor in (
         (rings.lower_edge, 4.0), (rings.main_beam, 4.0), (rings.upper_edge, 1.5)
     ):  # fmt: skip
         if ring is not None and ring.distance_m is not None:
             farthest_m = max(farthest_m, factor * ring.distance_m)
     nearest_m = max(0.1 * antenna_height_m, 0.5)
-    return np.geomspace(nearest_m, max(min(farthest_m, FARTHEST_M), 20.0 * antenna_height_m), 3000)
+    return np.geomspace(nearest_m, min(farthest_m, FARTHEST_M), 3000)
 
 
 def _power_density_dbm_m2(

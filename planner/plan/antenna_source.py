@@ -1,5 +1,6 @@
 """The antenna that is asked about: from a pattern file, a formula, or a sector of a plan."""
 
+import os
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
@@ -147,7 +148,7 @@ def _from_settings(source: str, settings: Mapping[str, Any]) -> StudiedAntenna:
         problems.append(_missing("gain_dbi", "gain_dbi=17"))
     if formula is not None and frequency_mhz is None:
         problems.append(_missing("frequency_mhz", "frequency_mhz=5600"))
-    if formula is None and not Path(source).exists():
+    if formula is None and not os.path.exists(source):  # also False for names no file can have
         allowed = "a pattern file, a plan file (.toml) or a formula: " + ", ".join(FORMULAS)
         problems.append(Problem(where=source, found="no such file", allowed=allowed))
     if formula is None:
