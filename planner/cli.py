@@ -134,6 +134,67 @@ def profile(
 
 
 @app.command()
+def antenna(
+    source: Annotated[
+        str,
+        typer.Argument(
+            metavar="FILE|FORMULA|PLAN",
+            help="A pattern file, the name of a formula, or a plan (.toml) with --sector.",
+        ),
+    ],
+    settings: Annotated[
+        list[str] | None,
+        typer.Option("--set", metavar="KEY=VALUE", help="A value, named as in the plan file."),
+    ] = None,
+    sector: Annotated[
+        str | None, typer.Option("--sector", metavar="ID", help="The sector of the plan.")
+    ] = None,
+    height_m: Annotated[
+        float | None,
+        typer.Option(
+            "--height-m", min=0.5, max=1000.0, help="Antenna above flat ground: where beams land."
+        ),
+    ] = None,
+    downtilt_deg: Annotated[
+        float | None,
+        typer.Option(
+            "--downtilt-deg", min=-45.0, max=45.0, help="Mechanical downtilt; needs --height-m."
+        ),
+    ] = None,
+    picture: Annotated[
+        Path | None,
+        typer.Option(
+            "--picture", metavar="FILE.png", help="Draw the pattern; with a height, the ground."
+        ),
+    ] = None,
+    as_json: JsonOption = False,
+) -> None:
+    """One antenna: gain, beam, lobes, directivity, field regions, exposure; where its beam lands.
+
+    Example: planner antenna panel.csv --set gain_dbi=17 --height-m 30 --downtilt-deg 4
+    """
+    from planner.plan.antenna_report import antenna_report
+    from planner.plan.antenna_source import settings_from, studied_antenna
+    from planner.report_antenna import antenna_text
+
+    for pair in settings or ():
+        if "=" not in pair:
+            raise typer.BadParameter(f"--set is {pair!r}; needed: KEY=VALUE")
+    from_plan = source.lower().endswith(".toml")
+    if downtilt_deg is not None and height_m is None and not from_plan:
+        raise typer.BadParameter("--downtilt-deg needs --height-m")
+    study = studied_antenna(
+        source,
+        settings_from(settings or ()),
+        sector_id=sector,
+        antenna_height_m=height_m,
+        mechanical_downtilt_deg=downtilt_deg,
+    )
+    record = antenna_report(study, picture=picture)
+    _print(record, antenna_text, as_json=as_json)
+
+
+@app.command()
 def demo(
     out: Annotated[
         Path, typer.Option("--out", metavar="DIR", help="The folder for results.")

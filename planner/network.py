@@ -40,6 +40,7 @@ class Sector:
     azimuth_deg: float  # true north, 0 <= a < 360
     mechanical_downtilt_deg: float = 0.0  # positive below the horizon
     electrical_downtilt_deg: float = 0.0  # positive below the horizon
+    largest_dimension_m: float | None = None  # of the antenna; None: the plan does not say
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -5,12 +5,14 @@ from typing import Any
 Record = dict[str, Any]
 
 
-def _table(rows: list[tuple[str, str]]) -> str:
+def table(rows: list[tuple[str, str]]) -> str:
+    """Names and values as two columns."""
     width = max(len(name) for name, _ in rows)
     return "\n".join(f"{name:<{width}}  {value}".rstrip() for name, value in rows)
 
 
-def _value(value: float | None, unit: str, digits: int = 1, sign: bool = False) -> str:
+def value_text(value: float | None, unit: str, digits: int = 1, sign: bool = False) -> str:
+    """A number with its unit."""
     if value is None:
         return "not computed"
     return f"{value:{'+' if sign else ''}.{digits}f} {unit}"
@@ -56,7 +58,7 @@ def run_text(record: Record) -> str:
     rows.append(("time", f"{seconds:.1f} s"))
     rows.append(("results in", record["folder"]))
     rows.append(("files", ", ".join(record["files"])))
-    return _table(rows)
+    return table(rows)
 
 
 def check_record(plan: Any, estimate: Any) -> Record:
@@ -109,7 +111,7 @@ def check_text(record: Record) -> str:
     ]
     rows += [("EIRP above limit", f"sector {sector}") for sector in record["eirp_above_limit"]]
     rows.append(("result", "the plan can be run"))
-    return _table(rows)
+    return table(rows)
 
 
 def profile_text(record: Record) -> str:
@@ -119,35 +121,35 @@ def profile_text(record: Record) -> str:
         ("from", f"{record['from']}, antenna {record['from_antenna_height_m']:g} m above ground"),
         ("to", f"{record['to']}, antenna {record['to_antenna_height_m']:g} m above ground"),
         ("frequency", f"{record['frequency_mhz']:g} MHz"),
-        ("distance", _value(None if distance is None else distance / 1000.0, "km", 3)),
+        ("distance", value_text(None if distance is None else distance / 1000.0, "km", 3)),
         (
             "bearing there, back",
             f"{_bearing(record['bearing_deg'])}, {_bearing(record['back_bearing_deg'])}",
         ),
         (
             "elevation there, back",
-            f"{_value(record['elevation_angle_deg'], 'deg', 2, sign=True)}, "
-            f"{_value(record['back_elevation_angle_deg'], 'deg', 2, sign=True)}",
+            f"{value_text(record['elevation_angle_deg'], 'deg', 2, sign=True)}, "
+            f"{value_text(record['back_elevation_angle_deg'], 'deg', 2, sign=True)}",
         ),
         (
             "line of sight",
             {True: "yes", False: "no", None: "not computed"}[record["line_of_sight"]],
         ),
         ("worst clearance", _clearance(record)),
-        ("free-space loss", _value(record["free_space_loss_db"], "dB")),
-        ("diffraction loss", _value(record["diffraction_loss_db"], "dB")),
-        ("  actual profile", _value(record["actual_bullington_db"], "dB")),
-        ("  smooth profile", _value(record["smooth_bullington_db"], "dB")),
-        ("  spherical earth", _value(record["spherical_earth_db"], "dB")),
-        ("path loss", _value(record["path_loss_db"], "dB")),
+        ("free-space loss", value_text(record["free_space_loss_db"], "dB")),
+        ("diffraction loss", value_text(record["diffraction_loss_db"], "dB")),
+        ("  actual profile", value_text(record["actual_bullington_db"], "dB")),
+        ("  smooth profile", value_text(record["smooth_bullington_db"], "dB")),
+        ("  spherical earth", value_text(record["spherical_earth_db"], "dB")),
+        ("path loss", value_text(record["path_loss_db"], "dB")),
     ]
     if record["sector"] is not None:
         rows += [
             ("best sector", record["sector"]),
-            ("received signal", _value(record["received_signal_dbm"], "dBm")),
+            ("received signal", value_text(record["received_signal_dbm"], "dBm")),
             (
                 "margin",
-                f"{_value(record['fade_margin_db'], 'dB', sign=True)} over the threshold of "
+                f"{value_text(record['fade_margin_db'], 'dB', sign=True)} over the threshold of "
                 f"{record['service_threshold_dbm']:g} dBm",
             ),
         ]
@@ -155,7 +157,7 @@ def profile_text(record: Record) -> str:
         rows.append(("received signal", "not stated: the antennas of a feed are not in the plan"))
     if record["picture"] is not None:
         rows.append(("picture", record["picture"]))
-    return _table(rows)
+    return table(rows)
 
 
 def _clearance(record: Record) -> str:

@@ -316,7 +316,7 @@ def test_version_and_help(monkeypatch, capsys):
     code, out, _ = planner(monkeypatch, capsys, "--version")
     assert code == 0
     assert re.fullmatch(r"ptmp-planner \d+\.\d+\.\d+\n", out)
-    for command in ("run", "check", "profile", "demo"):
+    for command in ("run", "check", "profile", "antenna", "demo"):
         code, out, _ = planner(monkeypatch, capsys, command, "--help")
         assert code == 0
         assert "Example: planner " + command in out

@@ -38,3 +38,21 @@ def test_links_between_pages_lead_somewhere(page):
     targets = LINK.findall(page.read_text(encoding="utf-8"))
     local = [t.split("#")[0] for t in targets if not re.match(r"[a-z]+:|#", t)]
     assert [target for target in local if not (page.parent / target).exists()] == []
+
+
+def test_the_page_of_antenna_figures_names_every_setting_and_limit():
+    """What --set takes beside the antenna's own keys, and the limits as the program has them."""
+    from planner.physics.exposure_limits import EXPOSURE_LIMITS
+    from planner.plan.antenna_source import SETTABLE
+    from planner.plan.schema import AntennaTable
+
+    page = (ROOT / "docs/antenna-figures.md").read_text(encoding="utf-8")
+    own = set(SETTABLE) - set(AntennaTable.model_fields) | {"gain_dbi", "largest_dimension_m"}
+    assert {key for key in own if f"`{key}`" not in page} == set()
+    for limit in EXPOSURE_LIMITS:
+        cells = []
+        for (mhz, fixed, slope), unit in zip(limit.bands, (1.0, 1e3, 1e3), strict=True):
+            level = f"f/{round(1.0 / slope)}" if slope else f"{fixed:g}"
+            cells.append(f"{level}, to {mhz / unit:g} {'MHz' if unit == 1.0 else 'GHz'}")
+        row = f"| {limit.guideline}, {limit.people} | {' | '.join(cells)} | "
+        assert row + f"{limit.averaging_minutes:g} min |" in page

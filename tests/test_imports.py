@@ -27,6 +27,7 @@ LEVELS = {
     "handout": 4.5,
     "plan": 5,
     "report": 5.5,
+    "report_antenna": 5.75,
     "cli": 6,
 }
 # Within level 1: one place for compile options, plain data, and a grid that knows true north.

@@ -9,6 +9,7 @@ from numpy.typing import ArrayLike, NDArray
 from planner.antenna import f1336
 from planner.antenna.pattern import (
     Pattern,
+    PatternKind,
     checked_angles,
     gain_notes,
     gain_problems,
@@ -61,6 +62,7 @@ class F1336Sector(Pattern):
     ITU-R F.1336-5 (2019), recommends 3.1 and 3.2, recalled from memory.
     """
 
+    kind: PatternKind = "envelope"
     frequency_mhz: float
     side_lobes: Literal["average", "peak"] = "average"
     k_p: float = 0.7  # relative minimum gain of the peak form

@@ -8,6 +8,7 @@ from numpy.typing import ArrayLike, NDArray
 from planner.antenna.beamwidth import half_power_beamwidth_deg
 from planner.antenna.pattern import (
     Pattern,
+    PatternKind,
     checked_angles,
     gain_notes,
     gain_problems,
@@ -37,6 +38,7 @@ class TwoCutPattern(Pattern):
     the level at its end.
     """
 
+    kind: PatternKind = "measured"
     horizontal_angle_deg: NDArray[np.float64]  # -180 to 180, both ends present
     horizontal_level_db: NDArray[np.float64]  # 0 at the highest point
     vertical_angle_deg: NDArray[np.float64]  # positive upwards, at least -90 to 90

@@ -16,6 +16,9 @@ from planner.plan.places import latitude_longitude, metric_crs
 from planner.plan.shown import nearest, shown
 from planner.plan.toml_file import Location
 
+# Keys of an antenna that its pattern does not depend on.
+NOT_OF_THE_PATTERN = ("largest_dimension_m",)
+
 Rest = dict[str, Any]  # a table as the file has it, None where a value cannot be used
 
 _DEGREES, _METRES = ("latitude", "longitude"), ("easting_m", "northing_m", "epsg")
@@ -108,7 +111,8 @@ def _check_antennas(findings: Findings, rest: Rest) -> None:
             )
         elif sources == ["file"]:
             for key in antenna:
-                if key not in ("file", "gain_dbi") and antenna[key] is not None:
+                own = ("file", "gain_dbi", *NOT_OF_THE_PATTERN)
+                if key not in own and antenna[key] is not None:
                     findings.add(
                         (*place, key),
                         found=shown(antenna[key]),

@@ -5,7 +5,7 @@ from typing import Any
 from planner.antenna import Pattern, formula_pattern
 from planner.errors import PatternError, Problem
 from planner.io.pattern_files import read_two_cut_csv
-from planner.plan.checks import Rest, trouble_with_file
+from planner.plan.checks import NOT_OF_THE_PATTERN, Rest, trouble_with_file
 from planner.plan.findings import Findings
 from planner.plan.shown import shown
 from planner.plan.toml_file import Location
@@ -59,7 +59,7 @@ def _built(
             others: dict[str, Any] = {
                 key: float(value) if isinstance(value, int) else value
                 for key, value in keys.items()
-                if key not in ("formula", "gain_dbi")
+                if key not in ("formula", "gain_dbi", *NOT_OF_THE_PATTERN)
             }
             return formula_pattern(
                 antenna,

@@ -17,7 +17,7 @@ from planner.plan.checks import add_problems_between_keys
 from planner.plan.findings import Findings, add_schema_problems, without
 from planner.plan.patterns import built_patterns
 from planner.plan.places import latitude_longitude
-from planner.plan.schema import PlanTable, SectorTable, TowerTable
+from planner.plan.schema import AntennaTable, PlanTable, SectorTable, TowerTable
 from planner.plan.toml_file import TomlFile, read_toml_file
 
 _SAME_POWER_DB = 1e-6  # sums of decimals are not exact
@@ -115,7 +115,7 @@ def _plan(file: TomlFile, tables: PlanTable, patterns: Mapping[tuple[str, str], 
     """The plan of tables in which nothing is wrong; patterns by (antenna, radio)."""
     folder = file.path.parent
     radios = _radios(tables)
-    towers = tuple(_tower(tower, radios) for tower in tables.tower)
+    towers = tuple(_tower(tower, radios, tables.antenna) for tower in tables.tower)
     terminal, model = tables.terminal, tables.model
     used = [sector for tower in tables.tower for sector in tower.sector if sector.on]
     used_antennas = dict.fromkeys(sector.antenna for sector in used)
@@ -185,7 +185,9 @@ def _radios(tables: PlanTable) -> dict[str, Radio]:
     return radios
 
 
-def _tower(tower: TowerTable, radios: Mapping[str, Radio]) -> Tower:
+def _tower(
+    tower: TowerTable, radios: Mapping[str, Radio], antennas: Mapping[str, AntennaTable]
+) -> Tower:
     place: tuple[float, float] | None
     if tower.latitude is not None and tower.longitude is not None:
         place = tower.latitude, tower.longitude
@@ -196,11 +198,13 @@ def _tower(tower: TowerTable, radios: Mapping[str, Radio]) -> Tower:
     if place is None:
         raise AssertionError(f"tower {tower.id} has passed the checks without a place")
     latitude, longitude = place
-    sectors = tuple(_sector(sector, radios) for sector in tower.sector if sector.on)
+    sectors = tuple(_sector(sector, radios, antennas) for sector in tower.sector if sector.on)
     return Tower(id=tower.id, latitude=latitude, longitude=longitude, sectors=sectors)
 
 
-def _sector(sector: SectorTable, radios: Mapping[str, Radio]) -> Sector:
+def _sector(
+    sector: SectorTable, radios: Mapping[str, Radio], antennas: Mapping[str, AntennaTable]
+) -> Sector:
     return Sector(
         id=sector.id,
         antenna=sector.antenna,
@@ -209,4 +213,5 @@ def _sector(sector: SectorTable, radios: Mapping[str, Radio]) -> Sector:
         azimuth_deg=sector.azimuth_deg + 0.0,  # -0.0 becomes 0.0
         mechanical_downtilt_deg=sector.mechanical_downtilt_deg,
         electrical_downtilt_deg=sector.electrical_downtilt_deg,
+        largest_dimension_m=antennas[sector.antenna].largest_dimension_m,
     )

@@ -7,6 +7,8 @@ from typing import Any
 from planner import __version__
 from planner.coverage import CellCounts
 from planner.customers import CustomerAnswer
+from planner.physics.free_space import wavelength_m
+from planner.physics.near_field import far_field_m
 from planner.plan.outputs import MODEL
 from planner.plan.read import Plan, eirp_excesses
 from planner.terrain import Terrain
@@ -23,6 +25,28 @@ def input_files(plan: Plan) -> list[Path]:
     files = [plan.path, *plan.terrain.rasters, plan.terrain.obstacles, plan.customers_file]
     files += plan.pattern_files
     return [path for path in files if path is not None]
+
+
+def near_field_warnings(plan: Plan, answers: tuple[CustomerAnswer, ...]) -> list[str]:
+    """Customers that stand where the pattern of their sector's antenna does not hold yet."""
+    warnings = []
+    for sector in plan.sectors:
+        if sector.largest_dimension_m is None:
+            continue
+        reach_m = float(
+            far_field_m(sector.largest_dimension_m, wavelength_m(sector.radio.frequency_mhz))
+        )
+        near = [
+            answer.customer.id
+            for answer in answers
+            if answer.sector_id == sector.id and answer.distance_m < reach_m
+        ]
+        if near:
+            warnings.append(
+                f"sector {sector.id}: the far field of its antenna begins at {reach_m:.3g} m; "
+                f"within it stands {', '.join(near)}, whose signal is not to be trusted"
+            )
+    return warnings
 
 
 def run_record(
@@ -48,6 +72,7 @@ def run_record(
         f"{excess.limit_dbm:.1f} dBm"
         for excess in excesses
     ]
+    warnings += near_field_warnings(plan, answers)
     grid = terrain.grid
     return {
         "software": f"ptmp-planner {__version__}",

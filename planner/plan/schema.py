@@ -143,6 +143,7 @@ class AntennaTable(Table):
     k_v: float | None = _number(0, 1, default=None)
     front_to_back_db: float | None = _number(3, 100, "dB", default=None)
     side_lobe_db: float | None = _number(3, 100, "dB", default=None)
+    largest_dimension_m: float | None = _number(0.01, 50, "m", default=None)
 
 
 class RadioTable(Table):
