@@ -9,7 +9,7 @@ import math
 from abc import ABC, abstractmethod
 from collections.abc import Iterable
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -19,6 +19,11 @@ from planner.errors import PatternError, Problem
 LOWEST_GAIN_DBI = -20.0  # common practice, no source: no sector antenna lies outside these
 HIGHEST_GAIN_DBI = 60.0
 HIGHEST_TILT_DEG = 45.0  # common practice, no source: either way, mechanical or electrical
+
+# What the levels of a pattern are. "measured": of one antenna, in this direction. "model": a
+# formula that stands for what an antenna radiates in this direction. "envelope": what side lobes
+# stay below or have in the mean, so that their sum is not the power that is radiated.
+PatternKind = Literal["measured", "model", "envelope"]
 
 # Directivity of a beam that fills its half-power rectangle evenly, in square degrees:
 # (180/pi)^2 * 4 pi. Kraus, Antennas (1950), chapter 2; from memory.
@@ -38,6 +43,8 @@ class Pattern(ABC):
     azimuth_beamwidth_deg: float  # between the 3 dB points, in the cut through the peak
     elevation_beamwidth_deg: float
     notes: tuple[str, ...] = ()  # what was assumed, for the reader of a report
+    kind: PatternKind = "model"  # whether gain and directivity can be held against each other
+    carried_downtilt_deg: float = 0.0  # electrical, in the levels; a further one comes on top
 
     @abstractmethod
     def gain(
