@@ -156,7 +156,7 @@ def test_bytes_that_are_not_text(tmp_path: Path) -> None:
     (told,) = problems(path)
     assert told.startswith("panel.csv line 2: found bytes that are not UTF-8 text")
     path.write_bytes(b'cut,angle_deg,level_db\nh,0,"0"x\n')
-    told, *_ = problems(path)
+    *_, told = problems(path)
     assert told.startswith("panel.csv line 2: found a row that is not CSV")
 
 

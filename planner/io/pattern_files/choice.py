@@ -70,14 +70,14 @@ def check_cuts(block: FrequencyBlock, faults: Faults, *, standard: bool) -> None
     if not copolar:
         faults.add(block.first_line, "no co-polar cut", f"two cuts {allowed}")
         return
-    names = [", ".join(dict.fromkeys(_title(cut) for cut in copolar[:12]))]
+    there_too = ", ".join(dict.fromkeys(_title(cut) for cut in copolar[:12]))
     missing = [
         word
         for word, of in (("horizontal", ("H", "AZ")), ("vertical", ("V", "EL")))
         if not any(cut.name in of for cut in copolar)
     ]
     found = f"no {' and no '.join(missing)} cut" if missing else "cuts that do not go together"
-    faults.add(block.first_line, f"{found} beside {names[0]}", f"two cuts {allowed}")
+    faults.add(block.first_line, f"{found} beside {there_too}", f"two cuts {allowed}")
 
 
 def chosen_block(

@@ -181,20 +181,15 @@ class _Reader:
         if cut is None:
             azimuth_deg = key if isinstance(key, float) else None
             if len(self.cuts) > MOST_AZIMUTHS:
-                self.faults.add(line, f"more than {MOST_AZIMUTHS:,} azimuths", "fewer in one file")
-                self.faults.raise_problems()
+                self.faults.stop(line, f"more than {MOST_AZIMUTHS:,} azimuths", "that many")
             name: CutName = {"horizontal": "AZ", "vertical": "EL"}.get(key, "SPHERE")  # type: ignore[assignment]
             cut = self.cuts[key] = GatheredCut(name, line, azimuth_deg)
             cut.label = key if isinstance(key, str) else ""
         return cut
 
     def _point(self, cut: GatheredCut, line: int, angle: str, level: str) -> None:
-        before = len(self.faults.problems)
-        add_point(cut, line, [angle, level], self.level_unit, self.faults)
-        marks = "," in angle + level or ";" in angle + level
-        if marks and len(self.faults.problems) > before:
-            last = self.faults.problems.pop()
-            self.faults.add(line, last.found, last.allowed, ADVICE)
+        advice = ADVICE if any(mark in angle + level for mark in ",;") else ""
+        add_point(cut, line, [angle, level], self.level_unit, self.faults, advice)
 
     def file(self) -> PatternFile:
         """The whole file, after its last line."""

@@ -67,20 +67,24 @@ class PointCounter:
         """One more point; raises ``PatternError`` with all that was found where it is too many."""
         self._points += 1
         if self._points > MOST_POINTS:
-            self._faults.problems = self._faults.problems[-1:]
-            self._faults.add(line, f"more than {MOST_POINTS:,} points", "that many in one file")
-            self._faults.raise_problems()
+            found = f"more than {MOST_POINTS:,} points"
+            self._faults.stop(line, found, "that many in one file")
 
 
 def add_point(
-    cut: GatheredCut, line: int, texts: list[str], level_unit: LevelUnit, faults: Faults
+    cut: GatheredCut,
+    line: int,
+    texts: list[str],
+    level_unit: LevelUnit,
+    faults: Faults,
+    advice: str = "",
 ) -> None:
     """Take an angle, a level and perhaps a phase; what cannot be used is told."""
     names = ("angle", "level", "phase")
     numbers = [number_in(text) for text in texts]
     bad = [i for i, number in enumerate(numbers) if math.isnan(number)]
     for index in bad:
-        faults.add(line, f"{names[index]} {quoted(texts[index].strip())}", "a number")
+        faults.add(line, f"{names[index]} {quoted(texts[index].strip())}", "a number", advice)
     if bad:
         cut.spoilt += 1
         return
@@ -200,7 +204,7 @@ def check_counts(cut: GatheredCut, faults: Faults) -> None:
         steps = np.diff(cut.angle_deg)
         even = bool(steps.size and np.allclose(steps, steps[0], rtol=0.0, atol=1e-6))
         told = f"NUPOIN says {declared:,}, but {found} points stand in {cut.title()}"
-        if even and cut.declared_ends == ends:
+        if even and cut.declared_ends == ends and abs(declared - found) == 1:
             faults.warn(
                 cut.declared_line,
                 f"{told}; they run evenly from the first to the last angle of FSTLST, so all of "

@@ -292,9 +292,7 @@ class _Reader:
             self.block_line, self.frequency_mhz = line, None
         self.total_cuts += 1
         if self.total_cuts > MOST_CUTS:
-            self.faults.problems = self.faults.problems[-1:]
-            self.faults.add(line, f"more than {MOST_CUTS:,} cuts", "that many in one file")
-            self.faults.raise_problems()
+            self.faults.stop(line, f"more than {MOST_CUTS:,} cuts", "that many in one file")
         self.cut = GatheredCut(name, line, azimuth_deg, self.polarization)
         return self.cut
 

@@ -8,6 +8,7 @@ import math
 import re
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import NoReturn
 
 from planner.errors import PatternError, Problem
 
@@ -40,7 +41,7 @@ class Faults:
     """Collects problems and warnings of one file; both within bounds."""
 
     file_name: str
-    problems: list[Problem] = field(default_factory=list)
+    problems: list[tuple[int, Problem]] = field(default_factory=list)  # with its line, or 0
     warnings: list[str] = field(default_factory=list)
     more_problems: int = 0
     more_warnings: int = 0
@@ -50,9 +51,15 @@ class Faults:
         if len(self.problems) >= MOST_PROBLEMS:
             self.more_problems += 1
             return
-        self.problems.append(
-            Problem(where=self.where(line), found=found, allowed=allowed, advice=advice)
-        )
+        problem = Problem(where=self.where(line), found=found, allowed=allowed, advice=advice)
+        self.problems.append((line or 0, problem))
+
+    def stop(self, line: int, found: str, allowed: str) -> NoReturn:
+        """Give up reading at a line: raise this problem and all that were found before."""
+        del self.problems[MOST_PROBLEMS - 1 :]
+        self.add(line, found, allowed)
+        self.raise_problems()
+        raise AssertionError("there is at least one problem")
 
     def warn(self, line: int | None, text: str) -> None:
         """Note something that was read all the same."""
@@ -66,10 +73,10 @@ class Faults:
         return self.file_name if line is None else f"{self.file_name} line {line}"
 
     def raise_problems(self) -> None:
-        """Raise every problem at once; nothing where there is none."""
+        """Raise every problem at once, from the top of the file; nothing where there is none."""
         if not self.problems:
             return
-        told = list(self.problems)
+        told = [problem for _, problem in sorted(self.problems, key=lambda one: one[0])]
         if self.more_problems:
             found = f"{self.more_problems} more problems"
             told.append(Problem(where=self.file_name, found=found))
