@@ -202,8 +202,8 @@ def _check_tilt(file: PatternFile, vertical: PatternCut, faults: Faults) -> None
     if abs(peak_deg + tilt_deg) <= tolerance_deg:
         return
     text = (
-        f"the vertical cut peaks at elevation {peak_deg:g} deg, not at {-tilt_deg:g} deg as the "
-        "stated electrical tilt has it; the points count, and a tilt in the plan comes on top"
+        f"the vertical cut peaks at elevation {peak_deg:g} deg, not at {0.0 - tilt_deg:g} deg as "
+        "the stated electrical tilt has it; the points count, and a tilt in the plan comes on top"
     )
     if abs(peak_deg - tilt_deg) <= tolerance_deg:
         text += ". If the angles count downwards, turn their sign"

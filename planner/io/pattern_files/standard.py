@@ -37,6 +37,7 @@ from planner.io.pattern_files.tags import (
 from planner.io.pattern_files.text import Faults, PatternText, number_in, quoted
 
 MOST_CUTS = 5000  # in one file; a sphere in steps of half a degree has 720 at each frequency
+MOST_FREQUENCIES = 1000
 MOST_TEXTS = 100  # records of free text of one name
 
 _RECORD = re.compile(r"\s*([A-Za-z][A-Za-z0-9]{3,6})\s*:\s*(,?)(.*)")
@@ -74,6 +75,7 @@ class _Reader:
         self.cut: GatheredCut | None = None
         self.block_line = 0  # 0: none open
         self.frequency_mhz: float | None = None
+        self.frequencies_mhz: set[float] = set()
         self.polarization = ""  # for cuts that do not state one
         self.declared_cuts: tuple[int, int] | None = None  # number and line
         self.declared_blocks: tuple[int, int] | None = None
@@ -208,9 +210,12 @@ class _Reader:
         if not 1.0 <= frequency_mhz <= 1_000_000.0:
             self.faults.add(line, f"PATFRE {quoted(value)}", "1 to 1,000,000 MHz")
             frequency_mhz = 1.0  # told: the file will not be used
-        elif frequency_mhz in [block.frequency_mhz for block in self.blocks[-1000:]]:
+        elif frequency_mhz in self.frequencies_mhz:
             self.faults.add(line, f"PATFRE {frequency_mhz:g} again", "each frequency once")
         self.frequency_mhz = frequency_mhz
+        self.frequencies_mhz.add(frequency_mhz)
+        if len(self.blocks) >= MOST_FREQUENCIES:
+            self.faults.stop(line, f"more than {MOST_FREQUENCIES:,} frequencies", "that many")
 
     def _take_numcut(self, line: int, value: str) -> None:
         number = self._count(line, "NUMCUT", value)
@@ -232,9 +237,9 @@ class _Reader:
     def _take_polari(self, line: int, value: str) -> None:
         polarization = value.upper().replace(" ", "")
         if not re.fullmatch(r"[A-Z]{1,4}/[A-Z]{1,4}", polarization):
-            self.faults.add(
-                line, f"POLARI {quoted(value)}", "antenna/illumination, such as V/V or SLR/SLL"
-            )
+            allowed = "antenna/illumination, such as V/V or SLR/SLL"
+            self.faults.add(line, f"POLARI {quoted(value)}", allowed)
+            polarization = ""
         if self.cut is None:
             self.polarization = polarization
         elif self.cut.angle_deg or self.cut.spoilt:  # the same cut, another polarization

@@ -15,6 +15,7 @@ from planner.errors import PatternError, Problem
 LARGEST_FILE_BYTES = 8_000_000  # a full sphere in steps of half a degree takes some 5 MB
 LONGEST_LINE = 1000  # characters; free text in the open standard is far shorter
 MOST_POINTS = 400_000  # in one file; a sphere in steps of half a degree has 259,920
+MOST_LINES = 500_000
 MOST_PROBLEMS = 50  # told one by one; the rest is counted
 MOST_WARNINGS = 20
 
@@ -95,8 +96,8 @@ def read_text(path: Path) -> PatternText:
     Raises
     ------
     PatternError
-        Where there is no such file, it is larger than 8 MB, binary or UTF-16, or has a line of
-        more than 1000 characters.
+        Where there is no such file, it is larger than 8 MB, binary or UTF-16, or has more than
+        500,000 lines or a line of more than 1000 characters.
     """
     content = _content(Path(path))
     name = Path(path).name
@@ -113,16 +114,25 @@ def read_text(path: Path) -> PatternText:
     try:
         text = content.decode("utf-8-sig")
     except UnicodeDecodeError as error:
-        before = content[: error.start].decode("utf-8-sig")
-        not_utf8_line = len(_LINE_END.split(before))
+        # latin-1 has a character for each byte and the same line ends
+        not_utf8_line = len(_LINE_END.split(content[: error.start].decode("latin-1")))
         text = content.decode("cp1252", errors="replace")
+    if text.count("\n") + text.count("\r") > 2 * MOST_LINES:  # before memory goes to the lines
+        raise _too_many_lines(name)
     lines: list[str] = _LINE_END.split(text)
+    if len(lines) > MOST_LINES:
+        raise _too_many_lines(name)
     faults = Faults(name)
     for number, line in enumerate(lines, start=1):
         if len(line) > LONGEST_LINE:
             faults.add(number, f"{len(line):,} characters", f"lines of up to {LONGEST_LINE}")
     faults.raise_problems()
     return PatternText(file_name=name, lines=tuple(lines), not_utf8_line=not_utf8_line)
+
+
+def _too_many_lines(name: str) -> PatternError:
+    found = f"more than {MOST_LINES:,} lines"
+    return PatternError(Problem(where=name, found=found, allowed="that many in one file"))
 
 
 def _content(path: Path) -> bytes:
