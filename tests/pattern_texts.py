@@ -84,9 +84,10 @@ def standard(*blocks: list[str], **changed: str) -> list[str]:
 
 
 def beam_db(azimuth: float, elevation: float) -> float:
-    """A beam to the boresight that is round on the sphere, 20 dB down behind."""
+    """A beam to the boresight, 20 dB down behind, that falls faster upwards than downwards."""
     cosine = math.cos(math.radians(azimuth)) * math.cos(math.radians(elevation))
-    return round(10.0 * (cosine - 1.0), 3) + 0.0
+    lopsided = 1.0 + 0.3 * math.sin(math.radians(elevation))
+    return round(10.0 * (cosine - 1.0) * lopsided, 3) + 0.0
 
 
 def fixed(**changed: list[str]) -> list[str]:

@@ -114,6 +114,17 @@ def test_polarization_of_the_wave(tmp_path: Path) -> None:
         )
 
 
+def test_cuts_through_the_peak_come_first(tmp_path: Path) -> None:
+    """Where both stand, AZ and EL are used rather than H and V."""
+    lines = block()
+    lines[1] = "NUMCUT:,4"
+    lines += cut("H", {a: across_db(a) / 2.0 for a in ANGLES})
+    lines += cut("V", {e: up_db(e) / 2.0 for e in ELEVATIONS})
+    pattern = read_pattern(written(tmp_path, standard(lines)), name="panel")
+    assert float(pattern.gain(90.0, 0.0)) == pytest.approx(11.5 + across_db(90))
+    assert float(pattern.gain(0.0, 30.0)) == pytest.approx(11.5 + up_db(30))
+
+
 @pytest.mark.parametrize(
     ("stated", "kind"), [("envelope", "envelope"), ("Typical", "measured"), ("", "measured")]
 )
@@ -210,3 +221,12 @@ def test_faults_in_a_plan(tmp_path: Path) -> None:
         read_plan(plan_with(tmp_path, "panel.txt"))
     assert "radio.access.frequency_mhz" in str(caught.value)
     assert "5150 to 5550 MHz, the band that panel.txt states" in str(caught.value)
+
+
+def test_a_formula_still_needs_its_gain(tmp_path: Path) -> None:
+    """Only a file may bring the gain with it."""
+    with pytest.raises(PlanError) as caught:
+        read_plan(write_plan(tmp_path, changed(("gain_dbi = 17\n", ""))))
+    (problem,) = caught.value.problems
+    assert "antenna.panel-90.gain_dbi" in problem.where
+    assert (problem.found, problem.allowed) == ("nothing", "-20 to 60 dBi")

@@ -13,6 +13,7 @@ from planner.io.pattern_files import pattern_of, read_pattern_file
 from planner.io.pattern_files.text import (
     LARGEST_FILE_BYTES,
     LONGEST_LINE,
+    MOST_LINES,
     MOST_POINTS,
     MOST_PROBLEMS,
     MOST_WARNINGS,
@@ -193,6 +194,20 @@ def test_the_longest_line(tmp_path: Path) -> None:
             ]
         else:
             assert read_pattern_file(path).header.comments[0] == text[8:]
+
+
+@pytest.mark.parametrize("end", ["\n", "\r", "\r\n"])
+def test_too_many_lines(tmp_path: Path, end: str) -> None:
+    """More lines than allowed are refused before they are split; at the limit they are read."""
+    path = tmp_path / "panel.txt"
+    sound = end.join(standard()) + end
+    path.write_bytes((sound + end * (MOST_LINES - sound.count(end) - 1)).encode())
+    assert read_pattern_file(path).header.model == "SEC-90"
+    for lines in (MOST_LINES, 3_900_000):
+        path.write_bytes((end * lines).encode())
+        assert problems(path) == [
+            "panel.txt: found more than 500,000 lines; allowed: that many in one file"
+        ]
 
 
 def test_a_fine_sphere_is_not_too_large(tmp_path: Path) -> None:
