@@ -213,7 +213,7 @@ def test_other_spellings_of_the_same_file(tmp_path: Path) -> None:
 
 
 def test_pattern_file(tmp_path: Path) -> None:
-    """An antenna may be a file of two cuts, read once for all radios; the plan names the file."""
+    """An antenna may be a file of two cuts, good for all radios; the plan names the file."""
     rows = ["cut,angle_deg,level_db"]
     for cut in ("h", "v"):
         rows += [f"{cut},{angle},{-min(30, abs(angle) // 4)}" for angle in range(-180, 180, 10)]
@@ -228,7 +228,7 @@ def test_pattern_file(tmp_path: Path) -> None:
     pattern = plan.patterns["west-1"]
     assert isinstance(pattern, TwoCutPattern)
     assert (pattern.name, pattern.gain_dbi) == ("panel-90", 17.0)
-    assert pattern is plan.patterns["west-2"]
+    assert isinstance(plan.patterns["west-2"], TwoCutPattern)
     assert plan.pattern_files == (tmp_path / "panel.csv",)
 
 

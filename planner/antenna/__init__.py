@@ -8,9 +8,11 @@ from planner.antenna.beamwidth import half_power_edges_deg
 from planner.antenna.f1336 import estimated_elevation_beamwidth_deg
 from planner.antenna.f1336_sector import F1336Sector
 from planner.antenna.formula import FORMULAS, formula_pattern
+from planner.antenna.grid_pattern import GridPattern, grid_pattern
 from planner.antenna.lookup import GainTable, gain_table
 from planner.antenna.mounting import antenna_direction_deg, mounted_gain_dbi
 from planner.antenna.pattern import Isotropic, Pattern
+from planner.antenna.total_tilt import TotalTiltPattern, with_total_tilt
 from planner.antenna.tr36814 import Tr36814Sector
 from planner.antenna.two_cut import TwoCutPattern, two_cut_pattern
 
@@ -18,15 +20,19 @@ __all__ = [
     "FORMULAS",
     "F1336Sector",
     "GainTable",
+    "GridPattern",
     "Isotropic",
     "Pattern",
+    "TotalTiltPattern",
     "Tr36814Sector",
     "TwoCutPattern",
     "antenna_direction_deg",
     "estimated_elevation_beamwidth_deg",
     "formula_pattern",
     "gain_table",
+    "grid_pattern",
     "half_power_edges_deg",
     "mounted_gain_dbi",
     "two_cut_pattern",
+    "with_total_tilt",
 ]

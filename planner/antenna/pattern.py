@@ -44,6 +44,7 @@ class Pattern(ABC):
     elevation_beamwidth_deg: float
     notes: tuple[str, ...] = ()  # what was assumed, for the reader of a report
     kind: PatternKind = "model"  # whether gain and directivity can be held against each other
+    carried_downtilt_deg: float = 0.0  # electrical, in the levels; a further one comes on top
 
     @abstractmethod
     def gain(

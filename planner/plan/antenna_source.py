@@ -9,9 +9,9 @@ from typing import Annotated, Any
 from pydantic import Field, TypeAdapter, ValidationError
 from pydantic.fields import FieldInfo
 
-from planner.antenna import FORMULAS, Pattern, formula_pattern
+from planner.antenna import FORMULAS, Pattern, formula_pattern, with_total_tilt
 from planner.errors import InputError, PatternError, Problem
-from planner.io.pattern_files import read_two_cut_csv
+from planner.io.pattern_files import read_pattern
 from planner.network import Sector
 from planner.plan.checks import NOT_OF_THE_PATTERN
 from planner.plan.read import Plan, read_plan
@@ -144,7 +144,7 @@ def _from_settings(source: str, settings: Mapping[str, Any]) -> StudiedAntenna:
     }
     frequency_mhz = settings.get("frequency_mhz")
     problems = []
-    if "gain_dbi" not in own:
+    if formula is not None and "gain_dbi" not in own:
         problems.append(_missing("gain_dbi", "gain_dbi=17"))
     if formula is not None and frequency_mhz is None:
         problems.append(_missing("frequency_mhz", "frequency_mhz=5600"))
@@ -168,12 +168,21 @@ def _from_settings(source: str, settings: Mapping[str, Any]) -> StudiedAntenna:
         pattern = _formula_pattern(formula, settings["frequency_mhz"], own)
     else:
         name = Path(source).name
-        pattern = read_two_cut_csv(Path(source), name=name, gain_dbi=own["gain_dbi"])
+        pattern = with_total_tilt(
+            read_pattern(
+                Path(source),
+                name=name,
+                gain_dbi=own.get("gain_dbi"),
+                frequency_mhz=frequency_mhz,
+            )
+        )
     antenna = MountedAntenna(
         label=name,
         pattern=pattern,
         azimuth_deg=None,
-        electrical_downtilt_deg=settings.get("electrical_downtilt_deg", 0.0),
+        electrical_downtilt_deg=settings.get(
+            "electrical_downtilt_deg", pattern.carried_downtilt_deg
+        ),
         frequency_mhz=frequency_mhz,
         transmit_power_dbm=settings.get("transmit_power_dbm"),
         feeder_loss_db=settings.get("feeder_loss_db", 0.0),

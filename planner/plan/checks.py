@@ -13,6 +13,7 @@ from typing import Any
 
 from planner.plan.findings import Findings
 from planner.plan.places import latitude_longitude, metric_crs
+from planner.plan.schema import table_and_field
 from planner.plan.shown import nearest, shown
 from planner.plan.toml_file import Location
 
@@ -109,6 +110,11 @@ def _check_antennas(findings: Findings, rest: Rest) -> None:
                 found="both formula and file" if sources else "neither formula nor file",
                 allowed="one of them",
             )
+        elif sources == ["formula"]:
+            if "gain_dbi" not in antenna:
+                _, gain = table_and_field((*place, "gain_dbi"))
+                allowed = (gain.description or "") if gain is not None else ""
+                findings.add((*place, "gain_dbi"), found="nothing", allowed=allowed)
         elif sources == ["file"]:
             for key in antenna:
                 own = ("file", "gain_dbi", *NOT_OF_THE_PATTERN)

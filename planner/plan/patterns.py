@@ -1,12 +1,15 @@
 """The antenna patterns of a plan: one for each antenna and radio that go together."""
 
+from collections.abc import Mapping
+from pathlib import Path
 from typing import Any
 
-from planner.antenna import Pattern, formula_pattern
+from planner.antenna import Pattern, formula_pattern, with_total_tilt
 from planner.errors import PatternError, Problem
-from planner.io.pattern_files import read_two_cut_csv
+from planner.io.pattern_files import PatternFile, pattern_of, read_pattern_file
 from planner.plan.checks import NOT_OF_THE_PATTERN, Rest, trouble_with_file
 from planner.plan.findings import Findings
+from planner.plan.schema import PlanTable, SectorTable
 from planner.plan.shown import shown
 from planner.plan.toml_file import Location
 
@@ -15,24 +18,46 @@ _ANY_FREQUENCY_MHZ = 5000.0
 
 
 def built_patterns(findings: Findings, rest: Rest) -> dict[tuple[str, str], Pattern]:
-    """Patterns by (antenna, radio) of all sectors; what is wrong goes into the findings."""
+    """Patterns by (antenna, radio) of all sectors; what is wrong goes into the findings.
+
+    Their electrical tilt is the antenna's whole tilt: what a file's levels hold is not applied
+    twice.
+    """
     antennas, radios = rest.get("antenna") or {}, rest.get("radio") or {}
     pairs = _pairs(rest, antennas, radios)
-    built: dict[tuple[str, float | None], Pattern | None] = {}  # a file holds at any frequency
+    polarization = (rest.get("model") or {}).get("polarization") or "vertical"
+    builder = _Builder(findings, polarization)
+    built: dict[tuple[str, float | None], Pattern | None] = {}
     patterns = {}
     for antenna, radio in pairs:
-        frequency_mhz = (radios[radio] or {}).get("frequency_mhz") or _ANY_FREQUENCY_MHZ
-        key = antenna, None if "file" in (antennas[antenna] or {}) else float(frequency_mhz)
+        frequency_mhz = (radios[radio] or {}).get("frequency_mhz")
+        key = antenna, None if frequency_mhz is None else float(frequency_mhz)
         if key not in built:
-            built[key] = _built(findings, antenna, antennas[antenna], radio, float(frequency_mhz))
+            built[key] = builder.pattern(antenna, antennas[antenna], radio, key[1])
         pattern = built[key]
         if pattern is not None:
             patterns[antenna, radio] = pattern
     used = {antenna for antenna, _ in pairs}
     for antenna in antennas:
         if antenna not in used:
-            _built(findings, antenna, antennas[antenna], "", _ANY_FREQUENCY_MHZ)
+            builder.pattern(antenna, antennas[antenna], "", None)
     return patterns
+
+
+def with_own_tilts(tables: PlanTable, patterns: Mapping[tuple[str, str], Pattern]) -> PlanTable:
+    """The tables with an electrical tilt in every sector: its pattern's own if none is given."""
+
+    def tilted(sector: SectorTable) -> SectorTable:
+        if sector.electrical_downtilt_deg is not None:
+            return sector
+        own_deg = patterns[sector.antenna, sector.radio].carried_downtilt_deg
+        return sector.model_copy(update={"electrical_downtilt_deg": own_deg})
+
+    towers = [
+        tower.model_copy(update={"sector": [tilted(sector) for sector in tower.sector]})
+        for tower in tables.tower
+    ]
+    return tables.model_copy(update={"tower": towers})
 
 
 def _pairs(rest: Rest, antennas: Rest, radios: Rest) -> list[tuple[Any, Any]]:
@@ -46,36 +71,61 @@ def _pairs(rest: Rest, antennas: Rest, radios: Rest) -> list[tuple[Any, Any]]:
     return list(dict.fromkeys((a, r) for a, r in pairs if a in antennas and r in radios))
 
 
-def _built(
-    findings: Findings, antenna: str, keys: Any, radio: str, frequency_mhz: float
-) -> Pattern | None:
-    """One pattern; None where something is wrong with it, which is then among the findings."""
-    sound = isinstance(keys, dict) and None not in keys.values() and "gain_dbi" in keys
-    if not sound or ("file" in keys) == ("formula" in keys):
-        return None
-    gain_dbi = float(keys["gain_dbi"])
-    try:
-        if "formula" in keys:
-            others: dict[str, Any] = {
-                key: float(value) if isinstance(value, int) else value
-                for key, value in keys.items()
-                if key not in ("formula", "gain_dbi", *NOT_OF_THE_PATTERN)
-            }
-            return formula_pattern(
-                antenna,
-                keys["formula"],
-                frequency_mhz=frequency_mhz,
-                gain_dbi=gain_dbi,
-                **others,
-            )
-        path = findings.file.path.parent / keys["file"]
+class _Builder:
+    """Builds patterns one by one; reads each file once."""
+
+    def __init__(self, findings: Findings, polarization: Any) -> None:
+        self._findings, self._polarization = findings, polarization
+        self._files: dict[Path, PatternFile] = {}
+
+    def pattern(
+        self, antenna: str, keys: Any, radio: str, frequency_mhz: float | None
+    ) -> Pattern | None:
+        """One pattern; None where something is wrong with it, which is then among the findings."""
+        sound = isinstance(keys, dict) and None not in keys.values()
+        if not sound or ("file" in keys) == ("formula" in keys):
+            return None
+        if "formula" in keys and "gain_dbi" not in keys:
+            return None
+        try:
+            if "formula" in keys:
+                return self._of_formula(antenna, keys, frequency_mhz)
+            return self._of_file(antenna, keys, frequency_mhz)
+        except PatternError as error:
+            for problem in error.problems:
+                _add_pattern_problem(self._findings, antenna, radio, problem)
+            return None
+
+    def _of_formula(self, antenna: str, keys: Rest, frequency_mhz: float | None) -> Pattern:
+        others: dict[str, Any] = {
+            key: float(value) if isinstance(value, int) else value
+            for key, value in keys.items()
+            if key not in ("formula", "gain_dbi", *NOT_OF_THE_PATTERN)
+        }
+        return formula_pattern(
+            antenna,
+            keys["formula"],
+            frequency_mhz=frequency_mhz or _ANY_FREQUENCY_MHZ,
+            gain_dbi=float(keys["gain_dbi"]),
+            **others,
+        )
+
+    def _of_file(self, antenna: str, keys: Rest, frequency_mhz: float | None) -> Pattern | None:
+        path = self._findings.file.path.parent / keys["file"]
         if trouble_with_file(path):
             return None
-        return read_two_cut_csv(path, name=antenna, gain_dbi=gain_dbi)
-    except PatternError as error:
-        for problem in error.problems:
-            _add_pattern_problem(findings, antenna, radio, problem)
-        return None
+        if path not in self._files:
+            self._files[path] = read_pattern_file(path)
+        gain_dbi = keys.get("gain_dbi")
+        return with_total_tilt(
+            pattern_of(
+                self._files[path],
+                name=antenna,
+                gain_dbi=None if gain_dbi is None else float(gain_dbi),
+                frequency_mhz=frequency_mhz,
+                polarization=self._polarization,
+            )
+        )
 
 
 def _add_pattern_problem(findings: Findings, antenna: str, radio: str, problem: Problem) -> None:

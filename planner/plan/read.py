@@ -15,7 +15,7 @@ from planner.physics.diffraction import Polarization
 from planner.physics.link import eirp_dbm
 from planner.plan.checks import add_problems_between_keys
 from planner.plan.findings import Findings, add_schema_problems, without
-from planner.plan.patterns import built_patterns
+from planner.plan.patterns import built_patterns, with_own_tilts
 from planner.plan.places import latitude_longitude
 from planner.plan.schema import AntennaTable, PlanTable, SectorTable, TowerTable
 from planner.plan.toml_file import TomlFile, read_toml_file
@@ -87,7 +87,7 @@ def read_plan(path: Path) -> Plan:
     patterns = built_patterns(findings, rest)
     if findings or tables is None:
         raise findings.error()
-    return _plan(file, tables, patterns)
+    return _plan(file, with_own_tilts(tables, patterns), patterns)
 
 
 def eirp_excesses(plan: Plan) -> tuple[EirpExcess, ...]:
@@ -212,6 +212,6 @@ def _sector(
         antenna_height_m=sector.antenna_height_m,
         azimuth_deg=sector.azimuth_deg + 0.0,  # -0.0 becomes 0.0
         mechanical_downtilt_deg=sector.mechanical_downtilt_deg,
-        electrical_downtilt_deg=sector.electrical_downtilt_deg,
+        electrical_downtilt_deg=sector.electrical_downtilt_deg or 0.0,
         largest_dimension_m=antennas[sector.antenna].largest_dimension_m,
     )

@@ -133,7 +133,7 @@ class AntennaTable(Table):
         '"F.1336-5", "TR 36.814" or "isotropic"', default=None
     )
     file: str | None = _file(default=None)
-    gain_dbi: float = _number(LOWEST_GAIN_DBI, HIGHEST_GAIN_DBI, "dBi")
+    gain_dbi: float | None = _number(LOWEST_GAIN_DBI, HIGHEST_GAIN_DBI, "dBi", default=None)
     azimuth_beamwidth_deg: float | None = _number(1, 360, "deg", default=None, below=True)
     elevation_beamwidth_deg: float | None = _number(0.5, 180, "deg", default=None, below=True)
     side_lobes: Literal["average", "peak"] | None = _words('"average" or "peak"', default=None)
@@ -178,8 +178,8 @@ class SectorTable(Table):
     mechanical_downtilt_deg: float = _number(
         -HIGHEST_TILT_DEG, HIGHEST_TILT_DEG, "deg", default=0.0
     )
-    electrical_downtilt_deg: float = _number(
-        -HIGHEST_TILT_DEG, HIGHEST_TILT_DEG, "deg", default=0.0
+    electrical_downtilt_deg: float | None = _number(
+        -HIGHEST_TILT_DEG, HIGHEST_TILT_DEG, "deg", default=None
     )
     on: bool = _words("true or false", default=True)
 
