@@ -11,7 +11,7 @@ from plans import PLAN, write_plan
 
 from planner.antenna.key_figures import key_figures
 from planner.customers import CustomerAnswer
-from planner.io.pattern_files import read_two_cut_csv
+from planner.io.pattern_files import read_pattern
 from planner.network import Customer
 from planner.plan import read_plan
 from planner.plan.record import near_field_warnings
@@ -98,7 +98,7 @@ def test_every_figure_is_in_its_place(tmp_path, monkeypatch, capsys):
     file = tmp_path / "lopsided.csv"
     file.write_text("\n".join(("cut,angle_deg,level_db", *rows)) + "\n", encoding="utf-8")
     found = record_of(monkeypatch, capsys, file, "--set", "gain_dbi=12")["figures"]
-    figures = key_figures(read_two_cut_csv(file, name="x", gain_dbi=12.0))
+    figures = key_figures(read_pattern(file, name="x", gain_dbi=12.0))
     for key in ("squint_deg", "front_to_back_db", "front_to_back_region_db", "efficiency",
                 "directivity_dbi", "gain_above_directivity_db", "peak_azimuth_offset_deg",
                 "peak_elevation_deg", "electrical_downtilt_found_deg"):  # fmt: skip
@@ -158,7 +158,11 @@ WRONG = {
         ["error: --set: found \"gain_db\"", "Nearest known key: gain_dbi",
          'error: --set vswr: found "0.5"; allowed: 1 to 100', "2 problems"],
     ),
-    "no gain": ((PANEL,), ["error: --set gain_dbi: found nothing; allowed: -20 to 60 dBi"]),
+    "no gain": (
+        ("tr 36.814", "--set", "frequency_mhz=5600"),
+        ["error: --set gain_dbi: found nothing; allowed: -20 to 60 dBi"],
+    ),
+    "no gain in the file either": ((PANEL,), ["panel-65.csv"]),
     "no number": ((PANEL, "--set", "gain_dbi=nan"), ['--set gain_dbi: found "nan"']),
     "given twice": (
         (PANEL, "--set", "gain_dbi=17", "--set", "gain_dbi=18"),

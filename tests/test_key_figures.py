@@ -18,7 +18,7 @@ from scipy.optimize import brentq
 from planner.antenna import FORMULAS, Isotropic, formula_pattern, two_cut_pattern
 from planner.antenna.key_figures import key_figures
 from planner.errors import PatternError
-from planner.io.pattern_files import read_two_cut_csv
+from planner.io.pattern_files import read_pattern
 
 PANEL = Path(__file__).parents[1] / "demo_sites" / "lake_ondrel" / "panel-65.csv"
 
@@ -199,7 +199,7 @@ def test_a_dip_in_the_main_beam_is_no_null():
 
 def test_the_demo_panel_s_lobes_are_those_of_its_file():
     """Points of the file: first lobes -13.14 dB at 10 deg, back lobe -22.5 dB."""
-    figures = key_figures(read_two_cut_csv(PANEL, name="panel", gain_dbi=17.0))
+    figures = key_figures(read_pattern(PANEL, name="panel", gain_dbi=17.0))
     assert figures.elevation.upper[0].peak_db == pytest.approx(-13.14, abs=1e-6)
     assert figures.elevation.lower[0].peak_db == pytest.approx(-13.14, abs=1e-6)
     assert figures.elevation.upper[0].peak_deg == pytest.approx(10.0, abs=1e-3)
@@ -245,7 +245,7 @@ def test_the_kind_of_every_formula():
         )
         found[formula] = pattern.kind
     assert found == KINDS
-    assert read_two_cut_csv(PANEL, name="panel", gain_dbi=17.0).kind == "measured"
+    assert read_pattern(PANEL, name="panel", gain_dbi=17.0).kind == "measured"
 
 
 def test_the_isotropic_antenna_has_no_beam():
