@@ -8,7 +8,11 @@ from test_sweep_field import exact_at, field_at, median_place, summit
 
 from planner.physics._jit import scalar
 from planner.physics._lanes import LANES, load, store
-from planner.physics.bullington import bullington_loss_db_scalar, bullington_point_nu_scalar
+from planner.physics.bullington import (
+    bullington_loss_db_scalar,
+    bullington_point_nu_scalar,
+    bullington_profile_loss_db,
+)
 from planner.physics.free_space import free_space_loss_db_scalar, wavelength_m_scalar
 from planner.physics.spherical_earth import spherical_earth_loss_db_scalar
 from planner.sweep import COMPUTED
@@ -156,6 +160,13 @@ def test_single_lanes_are_enough_over_the_sphere():
                 *path, earth_m, wavelength_m, frequency_mhz, n % 2 == 0, 0.0
             )
             smooth = _smooth_bullington_of_numbers(*path, earth_m, wavelength_m)
+            if lane == 0:  # a profile that has no heights, point by point
+                place_m = np.append(np.arange(0.0, path[0], 10.0), path[0])
+                zero_m = np.zeros_like(place_m)
+                whole = bullington_profile_loss_db(
+                    place_m, zero_m, *path[1:], earth_m, wavelength_m
+                )
+                assert smooth == pytest.approx(whole, abs=0.01)
             # Relative to the loss beyond 100 dB, where no link is.
             scale = max(1.0, exact / 100.0)
             worst = max(worst, abs(out[lane] - exact) / scale, abs(out[LANES + lane] - smooth))

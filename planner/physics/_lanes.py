@@ -8,7 +8,7 @@ instructions, of whatever width the processor has; nothing depends on a loop bei
 
 Three kinds: single (float32), wide (float64) and whole (int32); comparisons give masks. They live
 in local variables; ``load`` and ``store`` move them from and to flat arrays. The functions
-here exist in compiled code only.
+here exist in compiled code only, but for ``where``.
 """
 
 import math
@@ -23,7 +23,7 @@ from numba.core import cgutils
 from numba.core.imputils import lower_builtin, lower_cast
 from numba.core.typeconv import Conversion
 from numba.core.typing.templates import AbstractTemplate, infer_global, signature
-from numba.extending import intrinsic, models, register_model
+from numba.extending import intrinsic, models, overload, register_model
 
 LANES = 32
 _INT = ir.IntType(32)
@@ -178,7 +178,7 @@ _define(math.floor, _REAL, _library("floor"))
 
 
 @intrinsic
-def _where(typing_context: Any, condition: Any, one: Any, other: Any) -> Any:
+def _chosen(typing_context: Any, condition: Any, one: Any, other: Any) -> Any:
     if condition is MASK:
         of_lanes = [kind for kind in (one, other) if isinstance(kind, LaneType)]
         whole_numbers = isinstance(one, types.Integer) and isinstance(other, types.Integer)
@@ -190,6 +190,19 @@ def _where(typing_context: Any, condition: Any, one: Any, other: Any) -> Any:
         return builder.select(*values)
 
     return result(MASK if condition is MASK else types.boolean, result, result), generate
+
+
+def where(condition: Any, one: Any, other: Any) -> Any:
+    """``one`` where the condition holds, else ``other``; for numbers as well as for lanes."""
+    return one if condition else other
+
+
+_select: Any = _chosen
+
+
+@overload(where, strict=False)
+def _where_in_kernels(condition: Any, one: Any, other: Any) -> Any:
+    return lambda condition, one, other: _select(condition, one, other)
 
 
 @intrinsic
@@ -333,7 +346,6 @@ def _of_bits(typing_context: Any, value: Any) -> Any:
 
 
 # Called without the typing context, which numba supplies.
-where: Any = _where  # (condition, one, other): one where it holds; for numbers as well as lanes
 lane_numbers: Any = _lane_numbers  # () -> 0, 1, 2 ... as whole lanes
 next_lane: Any = _shift(1)  # each lane gets what the next one holds, the last keeps its own
 previous_lane: Any = _shift(-1)

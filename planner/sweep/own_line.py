@@ -33,6 +33,7 @@ from planner.sweep.state import (
     GROUND_SLOPE,
     HOLES,
     LOWEST,
+    MIDDLE_AT,
     NU_SCALE,
     OWN_BENT,
     OWN_SAMPLES,
@@ -43,7 +44,6 @@ from planner.sweep.state import (
     SHARE_OF_NEXT,
     SLOPE,
     SURFACE_AT,
-    SURFACE_SLOPE,
     TX_SLOPE,
     WANTED,
     Link,
@@ -139,7 +139,7 @@ def own_profile(
         CELL_GROUND_SLOPE,
         between(load(narrow, GROUND_SLOPE), load(narrow, GROUND_SLOPE + 1), share),
     )
-    store(narrow, TX_SLOPE, _horizon(narrow, place, flat_surface, share))
+    store(narrow, TX_SLOPE, _horizon(place, flat_surface, share))
     cell = load(place, CELL)
     stride = np.int32(wedge.lateral_stride)
     ground = gather(flat_ground, line * wedge.line_stride, cell * stride) - f4(link.tx_height_m)
@@ -204,18 +204,19 @@ def _own_crossing(
 
 
 @inlined
-def _horizon(narrow: NDArray, place: NDArray, flat_surface: NDArray, share: Any) -> Any:
+def _horizon(place: NDArray, flat_surface: NDArray, share: Any) -> Any:
     """Steepest slope from the mast on the way to the cells, short of their own samples.
 
-    The terrain there lies in proportion between two radials. It is steepest where it is so on one
-    of them.
+    The terrain there lies in proportion between two radials. Looked at are the places where it is
+    steepest on either of them and halfway between.
     """
-    slope, next_slope = load(narrow, SURFACE_SLOPE), load(narrow, SURFACE_SLOPE + 1)
-    at, next_at = load(place, SURFACE_AT), load(place, SURFACE_AT + 1)
     lane = lane_numbers()
-    other = gather(flat_surface, 1, at * np.int32(LANES) + lane) / (single(at) + 1.0)
-    next_other = gather(flat_surface, 0, next_at * np.int32(LANES) + lane) / (single(next_at) + 1.0)
-    return max(between(slope, other, share), between(next_other, next_slope, share))
+    steepest = share * 0.0 + LOWEST
+    for at in (load(place, SURFACE_AT), load(place, SURFACE_AT + 1), load(place, MIDDLE_AT)):
+        first = at * np.int32(LANES) + lane
+        height = between(gather(flat_surface, 0, first), gather(flat_surface, 1, first), share)
+        steepest = max(height / (single(at) + 1.0), steepest)
+    return steepest
 
 
 @scalar

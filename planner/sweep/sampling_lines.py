@@ -32,6 +32,8 @@ from planner.sweep.state import (
     LAST_GROUND,
     LID,
     LOWEST,
+    MIDDLE_AT,
+    MIDDLE_SLOPE,
     MOMENT,
     REGION,
     RX_ABOVE,
@@ -97,6 +99,8 @@ def start_fan(
         narrow[HOLES + lane] = 0.0
         narrow[RX_ABOVE + lane] = link.receiver_height_m
         place[SURFACE_AT + lane] = unused
+        narrow[MIDDLE_SLOPE + lane] = LOWEST
+        place[MIDDLE_AT + lane] = unused
         surface[unused * LANES + lane] = LOWEST
 
 
@@ -237,6 +241,11 @@ def raise_horizon(
     higher = slope > best
     store(narrow, SURFACE_SLOPE, where(higher, slope, best))
     store(place, SURFACE_AT, where(higher, np.int32(sample), load(place, SURFACE_AT)))
+    slope = slope + next_lane(slope)  # twice the middle's
+    best = load(narrow, MIDDLE_SLOPE)
+    higher = slope > best
+    store(narrow, MIDDLE_SLOPE, where(higher, slope, best))
+    store(place, MIDDLE_AT, where(higher, np.int32(sample), load(place, MIDDLE_AT)))
     stop = sample + 1
     if stop % BLOCK == 0:
         block = stop // BLOCK - 1

@@ -161,7 +161,8 @@ ROW_WEIGHT = 37 * LANES  # 1 / sqrt of the product of the distances to both ends
 ROW_PLACE = 38 * LANES  # steps from the mast
 STEP_BULGE = 39 * LANES  # of the earth, per step squared
 STEP_DRIFT = 40 * LANES  # by how much less of it per step
-NARROW_ROWS = 41
+MIDDLE_SLOPE = 41 * LANES  # steepest surface seen from the mast halfway between two radials
+NARROW_ROWS = 42
 
 # Offsets into ``wide``.
 SLOPE = 0 * LANES  # by which each radial moves sideways from line to line
@@ -172,4 +173,5 @@ WIDE_ROWS = 3
 CELL = 0 * LANES  # lateral index of the cell
 SURFACE_AT = 1 * LANES  # sample that is steepest seen from the mast so far
 STATUS = 2 * LANES  # what became of it
-PLACES = 3 * LANES
+MIDDLE_AT = 3 * LANES  # sample that is steepest halfway to the next radial
+PLACES = 4 * LANES
