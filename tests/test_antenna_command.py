@@ -114,6 +114,20 @@ def test_every_figure_is_in_its_place(tmp_path, monkeypatch, capsys):
     assert len(set(numbers)) >= len(numbers) - 1  # the tilt found is the peak's elevation
 
 
+def test_a_file_that_states_too_much_gain_is_called_out(tmp_path, monkeypatch, capsys):
+    """The vale's panel radiates 17.6 dBi at most; with 20 in its own MDGAIN it is impossible."""
+    panel = PANEL.parents[1] / "harrow_vale" / "panel-90.txt"
+    sound = record_of(monkeypatch, capsys, panel)
+    assert sound["figures"]["gain_verdict"] == "possible"
+    boasting = tmp_path / "boasting.txt"
+    text = panel.read_text(encoding="utf-8")
+    assert "MDGAIN:,17\n" in text
+    boasting.write_text(text.replace("MDGAIN:,17\n", "MDGAIN:,20\n"), encoding="utf-8")
+    record = record_of(monkeypatch, capsys, boasting)
+    assert record["figures"]["gain_verdict"] == "impossible"
+    assert any("2.4 dB above the directivity" in warning for warning in record["warnings"])
+
+
 def test_an_inconsistent_gain_is_called_out(monkeypatch, capsys):
     """23 dBi for a pattern of 19.4 dBi is impossible; 9 dBi is rather a slip; 17 dBi is neither."""
     high = record_of(monkeypatch, capsys, PANEL, "--set", "gain_dbi=23")
