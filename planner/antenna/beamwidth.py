@@ -14,15 +14,15 @@ HALVINGS = 40  # of a scan step: far below a millionth of a degree
 
 
 def half_power_edges_deg(
-    pattern: Pattern, *, electrical_downtilt_deg: float = 0.0
+    pattern: Pattern, *, electrical_downtilt_deg: float | None = None
 ) -> tuple[float, float]:
     """Azimuth offsets left and right of the peak where the gain is 3 dB below it. [deg]
 
     Parameters
     ----------
     pattern : Pattern
-    electrical_downtilt_deg : float
-        Positive downwards. [deg]
+    electrical_downtilt_deg : float or None
+        Positive downwards; None: what the pattern carries. [deg]
 
     Returns
     -------

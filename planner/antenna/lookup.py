@@ -159,7 +159,7 @@ def gain_table(
     *,
     azimuth_deg: float,
     mechanical_downtilt_deg: float = 0.0,
-    electrical_downtilt_deg: float = 0.0,
+    electrical_downtilt_deg: float | None = None,
 ) -> GainTable:
     """Table of the gain of a mounted pattern over true azimuth and elevation at the mast.
 
@@ -168,8 +168,10 @@ def gain_table(
     pattern : Pattern
     azimuth_deg : float
         Where the boresight points, clockwise from true north. [deg]
-    mechanical_downtilt_deg, electrical_downtilt_deg : float
+    mechanical_downtilt_deg : float
         Positive downwards, -45 to 45. [deg]
+    electrical_downtilt_deg : float or None
+        The same; None: what the pattern carries. [deg]
 
     Notes
     -----
@@ -179,6 +181,8 @@ def gain_table(
     gain may depend on an azimuth that has no meaning there, nothing is promised within 1.5 degrees.
     """
     checked_tilt(mechanical_downtilt_deg)
+    if electrical_downtilt_deg is None:
+        electrical_downtilt_deg = pattern.electrical_downtilt_deg
     azimuths, elevations = _nodes(pattern, electrical_downtilt_deg)
     gain_dbi = pattern.gain(
         azimuths[np.newaxis, :],

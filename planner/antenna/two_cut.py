@@ -47,15 +47,14 @@ class TwoCutPattern(Pattern):
         azimuth_offset_deg: ArrayLike,
         elevation_deg: ArrayLike,
         *,
-        electrical_downtilt_deg: float = 0.0,
+        electrical_downtilt_deg: float | None = None,
     ) -> NDArray[np.float64]:
         """Gain towards a direction: see :meth:`Pattern.gain`."""
-        azimuth_deg, elevation = checked_angles(
-            azimuth_offset_deg, elevation_deg, electrical_downtilt_deg
-        )
+        steering_deg = self.steering_deg(electrical_downtilt_deg)
+        azimuth_deg, elevation = checked_angles(azimuth_offset_deg, elevation_deg)
         horizontal_db = np.interp(azimuth_deg, self.horizontal_angle_deg, self.horizontal_level_db)
         vertical_db = np.interp(
-            elevation + electrical_downtilt_deg, self.vertical_angle_deg, self.vertical_level_db
+            elevation + steering_deg, self.vertical_angle_deg, self.vertical_level_db
         )
         return np.asarray(self.gain_dbi + horizontal_db + vertical_db)
 
