@@ -84,17 +84,23 @@ class Pattern(ABC):
         """How much further down than it is the pattern has to be steered; checked. [deg]"""
         if electrical_downtilt_deg is None:
             return 0.0
+        steering_deg = electrical_downtilt_deg - self.electrical_downtilt_deg
         allowed = ""
         if not -HIGHEST_TILT_DEG <= electrical_downtilt_deg <= HIGHEST_TILT_DEG:
             allowed = f"{-HIGHEST_TILT_DEG:g} to {HIGHEST_TILT_DEG:g} deg, positive downwards"
         elif electrical_downtilt_deg != 0.0 and not self.tilts_electrically:
             allowed = f"0 deg: antenna {self.name} has no electrical tilt"
+        elif abs(steering_deg) > HIGHEST_TILT_DEG:
+            allowed = (
+                f"at most {HIGHEST_TILT_DEG:g} deg from the {self.electrical_downtilt_deg:g} deg "
+                f"that antenna {self.name} carries already"
+            )
         if allowed:
             found = f"{electrical_downtilt_deg:g}"
             raise PatternError(
                 Problem(where="electrical_downtilt_deg", found=found, allowed=allowed)
             )
-        return electrical_downtilt_deg - self.electrical_downtilt_deg
+        return steering_deg
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
