@@ -18,6 +18,7 @@ from planner.antenna import (
 )
 from planner.antenna.lookup import (
     BINS_PER_QUARTER,
+    LENGTH_BITS,
     PLACE_STEPS_PER_NODE,
     GainArrays,
     table_gain_dbi,
@@ -183,8 +184,8 @@ def test_table_is_read_only_and_whole() -> None:
         (arrays.elevation_places, 2 * BINS_PER_QUARTER, rows - 2),
     ):
         assert places.shape == (bins + 1,)
-        assert places[0] >> 9 == 0
-        assert places[-1] == last_node * PLACE_STEPS_PER_NODE << 9
+        assert places[0] >> LENGTH_BITS == 0
+        assert places[-1] == last_node * PLACE_STEPS_PER_NODE << LENGTH_BITS
     assert (arrays.levels >> 16).min() == 0
     for array in arrays[:3]:
         with pytest.raises(ValueError, match="read-only"):

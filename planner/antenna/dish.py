@@ -138,6 +138,7 @@ G1 up to 12.02 (D/lambda)^-0.6 deg, 29 - 25 log phi, -13 from 48 deg |
     """
 
     tilts_electrically: ClassVar[bool] = False
+    is_round: ClassVar[bool] = True
 
     kind: PatternKind = field(init=False, default="envelope")
     azimuth_beamwidth_deg: float = field(init=False, default=math.nan)

@@ -40,6 +40,7 @@ class Pattern(ABC):
     """
 
     tilts_electrically: ClassVar[bool] = True  # False: asking for an electrical tilt is an error
+    is_round: ClassVar[bool] = False  # the gain depends on the angle off the boresight alone
 
     name: str  # as in the plan
     gain_dbi: float  # at the peak, over isotropic
