@@ -43,7 +43,7 @@ HALF_POWER_DEG_WAVELENGTHS = 2.0 * math.sqrt(3.0 / 2.5e-3)
 # Gain of a dish of known size and back, with an efficiency of about 60 %: both Recommendations.
 GAIN_OF_ONE_WAVELENGTH_DBI = 7.7
 WHOLE_APERTURE_DBI = 20.0 * math.log10(math.pi)  # of one wavelength, evenly lit, without loss
-_LARGEST_M = 30.0
+LARGEST_DIAMETER_M = 30.0
 
 
 @scalar
@@ -160,7 +160,7 @@ G1 up to 12.02 (D/lambda)^-0.6 deg, 29 - 25 log phi, -13 from 48 deg |
         )
         if self.diameter_m is not None:
             problems += range_problems(
-                self.name, "diameter_m", self.diameter_m, 0.0, _LARGEST_M, unit="m", above=True
+                self.name, "diameter_m", self.diameter_m, 0.0, LARGEST_DIAMETER_M, unit="m", above=True
             )
         raise_problems(problems)
         raise_problems(self._size_problems())

@@ -108,12 +108,19 @@ def _check_antennas(findings: Findings, rest: Rest) -> None:
             )
         elif sources == ["file"]:
             for key in antenna:
-                if key not in ("file", "gain_dbi") and antenna[key] is not None:
+                if key not in ("file", "gain_dbi", "interpolation") and antenna[key] is not None:
                     findings.add(
                         (*place, key),
                         found=shown(antenna[key]),
                         allowed=f"no {key} beside a pattern file, which says it itself",
                     )
+        elif antenna.get("interpolation") is not None:
+            findings.add(
+                (*place, "interpolation"),
+                found=shown(antenna["interpolation"]),
+                allowed="nothing: a formula holds in every direction",
+                advice="Leave the key out",
+            )
 
 
 def _check_thresholds(findings: Findings, rest: Rest) -> None:

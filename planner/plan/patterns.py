@@ -1,5 +1,6 @@
 """The antenna patterns of a plan: one for each antenna and radio that go together."""
 
+from dataclasses import replace
 from typing import Any
 
 from planner.antenna import Pattern, formula_pattern
@@ -12,6 +13,7 @@ from planner.plan.toml_file import Location
 
 # An antenna that no sector uses is checked all the same, at a frequency where every formula holds.
 _ANY_FREQUENCY_MHZ = 5000.0
+_COUNTS = ("rows", "columns")  # stay whole numbers
 
 
 def built_patterns(findings: Findings, rest: Rest) -> dict[tuple[str, str], Pattern]:
@@ -32,7 +34,29 @@ def built_patterns(findings: Findings, rest: Rest) -> dict[tuple[str, str], Patt
     for antenna in antennas:
         if antenna not in used:
             _built(findings, antenna, antennas[antenna], "", _ANY_FREQUENCY_MHZ)
+    _check_tilts(findings, rest, patterns)
     return patterns
+
+
+def _check_tilts(
+    findings: Findings, rest: Rest, patterns: dict[tuple[str, str], Pattern]
+) -> None:
+    """Electrical tilts that an antenna cannot have."""
+    for number, tower in enumerate(rest.get("tower") or []):
+        for place, sector in enumerate((tower or {}).get("sector") or []):
+            pattern = patterns.get(((sector or {}).get("antenna"), (sector or {}).get("radio")))
+            tilt_deg = (sector or {}).get("electrical_downtilt_deg")
+            if pattern is None or tilt_deg is None:
+                continue
+            try:
+                pattern.steering_deg(tilt_deg)
+            except PatternError as error:
+                for problem in error.problems:
+                    findings.add(
+                        ("tower", number, "sector", place, "electrical_downtilt_deg"),
+                        found=problem.found,
+                        allowed=problem.allowed,
+                    )
 
 
 def _pairs(rest: Rest, antennas: Rest, radios: Rest) -> list[tuple[Any, Any]]:
@@ -57,9 +81,9 @@ def _built(
     try:
         if "formula" in keys:
             others: dict[str, Any] = {
-                key: float(value) if isinstance(value, int) else value
+                key: float(value) if isinstance(value, int) and key not in _COUNTS else value
                 for key, value in keys.items()
-                if key not in ("formula", "gain_dbi")
+                if key not in ("formula", "gain_dbi", "interpolation")
             }
             return formula_pattern(
                 antenna,
@@ -71,7 +95,10 @@ def _built(
         path = findings.file.path.parent / keys["file"]
         if trouble_with_file(path):
             return None
-        return read_two_cut_csv(path, name=antenna, gain_dbi=gain_dbi)
+        cuts = read_two_cut_csv(path, name=antenna, gain_dbi=gain_dbi)
+        if "interpolation" in keys:
+            cuts = replace(cuts, interpolation=keys["interpolation"])
+        return cuts
     except PatternError as error:
         for problem in error.problems:
             _add_pattern_problem(findings, antenna, radio, problem)

@@ -115,7 +115,7 @@ def _plan(file: TomlFile, tables: PlanTable, patterns: Mapping[tuple[str, str], 
     """The plan of tables in which nothing is wrong; patterns by (antenna, radio)."""
     folder = file.path.parent
     radios = _radios(tables)
-    towers = tuple(_tower(tower, radios) for tower in tables.tower)
+    towers = tuple(_tower(tower, radios, patterns) for tower in tables.tower)
     terminal, model = tables.terminal, tables.model
     used = [sector for tower in tables.tower for sector in tower.sector if sector.on]
     used_antennas = dict.fromkeys(sector.antenna for sector in used)
@@ -185,7 +185,11 @@ def _radios(tables: PlanTable) -> dict[str, Radio]:
     return radios
 
 
-def _tower(tower: TowerTable, radios: Mapping[str, Radio]) -> Tower:
+def _tower(
+    tower: TowerTable,
+    radios: Mapping[str, Radio],
+    patterns: Mapping[tuple[str, str], Pattern],
+) -> Tower:
     place: tuple[float, float] | None
     if tower.latitude is not None and tower.longitude is not None:
         place = tower.latitude, tower.longitude
@@ -196,11 +200,16 @@ def _tower(tower: TowerTable, radios: Mapping[str, Radio]) -> Tower:
     if place is None:
         raise AssertionError(f"tower {tower.id} has passed the checks without a place")
     latitude, longitude = place
-    sectors = tuple(_sector(sector, radios) for sector in tower.sector if sector.on)
+    sectors = tuple(
+        _sector(sector, radios, patterns[sector.antenna, sector.radio])
+        for sector in tower.sector
+        if sector.on
+    )
     return Tower(id=tower.id, latitude=latitude, longitude=longitude, sectors=sectors)
 
 
-def _sector(sector: SectorTable, radios: Mapping[str, Radio]) -> Sector:
+def _sector(sector: SectorTable, radios: Mapping[str, Radio], pattern: Pattern) -> Sector:
+    tilt_deg = sector.electrical_downtilt_deg
     return Sector(
         id=sector.id,
         antenna=sector.antenna,
@@ -208,5 +217,5 @@ def _sector(sector: SectorTable, radios: Mapping[str, Radio]) -> Sector:
         antenna_height_m=sector.antenna_height_m,
         azimuth_deg=sector.azimuth_deg + 0.0,  # -0.0 becomes 0.0
         mechanical_downtilt_deg=sector.mechanical_downtilt_deg,
-        electrical_downtilt_deg=sector.electrical_downtilt_deg,
+        electrical_downtilt_deg=pattern.electrical_downtilt_deg if tilt_deg is None else tilt_deg,
     )
