@@ -1,13 +1,13 @@
 """Patterns that are known in every direction, and what their two cuts make of them."""
 
-from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from collections.abc import Callable, Iterable, Iterator
+from dataclasses import astuple, dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from planner.antenna import Pattern, TwoCutPattern, formula_pattern, two_cut_pattern
-from planner.antenna.interpolation import Interpolation
+from planner.antenna.interpolation import INTERPOLATIONS, Interpolation
 
 Gains = Callable[[NDArray[np.float64], NDArray[np.float64]], NDArray[np.float64]]
 CUT_STEP_DEG = 0.5
@@ -145,3 +145,28 @@ def misfit(pattern: Pattern, gains: Gains, peak_db: float) -> Misfit:
         wide_worst_db=float(np.abs(error_db[wide]).max()),
         radiated_power_db=radiated(true_db + error_db) - radiated(true_db),
     )
+
+
+def study_table(*, rear_half: bool = True) -> Iterator[str]:
+    """Lines of a table: what each interpolation makes of each known pattern, and of all."""
+    yield f"| pattern | widths | {' | '.join(INTERPOLATIONS)} |"
+    yield "|---|---|" + "---|" * len(INTERPOLATIONS)
+    every = []
+    for name, gains in known_patterns():
+        found = []
+        for way in INTERPOLATIONS:
+            pattern, peak_db = cuts_of(gains, way, rear_half=rear_half)
+            found.append(astuple(misfit(pattern, gains, peak_db)))
+        every.append(found)
+        widths = f"{pattern.azimuth_beamwidth_deg:.0f} × {pattern.elevation_beamwidth_deg:.0f}"
+        yield f"| {name} | {widths} | {' | '.join(_cell(figures) for figures in found)} |"
+    figures = np.array(every)
+    together = np.sqrt((figures**2).mean(axis=0))
+    worst = np.abs(figures).max(axis=0)
+    together[:, 1], together[:, 3] = worst[:, 1], worst[:, 3]
+    yield f"| all | | {' | '.join(_cell(figures) for figures in together)} |"
+
+
+def _cell(figures: Iterable[float]) -> str:
+    near_rms, near_worst, wide_rms, wide_worst, power = figures
+    return f"{near_rms:.2f}, {near_worst:.1f}; {wide_rms:.1f}, {wide_worst:.0f}; {power:+.2f}"
