@@ -14,11 +14,13 @@ from planner.antenna import (
     antenna_direction_deg,
     formula_pattern,
     gain_table,
+    lookup,
     mounted_gain_dbi,
     two_cut_pattern,
 )
 from planner.antenna.interpolation import INTERPOLATIONS, Interpolation
 from planner.antenna.lookup import (
+    BINS_PER_DEG,
     BINS_PER_QUARTER,
     LENGTH_BITS,
     PLACE_STEPS_PER_NODE,
@@ -141,11 +143,11 @@ def test_table_is_within_a_twentieth_of_a_db(
     assert np.mean(error > 0.05) <= (0.005 if step_db else 0.0)
 
 
-def test_corners_high_above_the_horizon() -> None:
-    """Points of a vertical cut near the zenith are met, where a bin of the table is steepest."""
+def zigzag() -> Pattern:
+    """Up and down by 6 dB from degree to degree of elevation."""
     upright = np.arange(-90.0, 91.0, 1.0)
     levels = np.where(np.abs(upright) < 10.0, 0.0, -10.0 - 6.0 * (np.arange(upright.size) % 2))
-    pattern = two_cut_pattern(
+    return two_cut_pattern(
         name="zigzag",
         gain_dbi=10.0,
         horizontal_angle_deg=np.arange(-180.0, 180.0, 30.0),
@@ -153,11 +155,33 @@ def test_corners_high_above_the_horizon() -> None:
         vertical_angle_deg=upright,
         vertical_level_db=levels,
     )
+
+
+def test_corners_high_above_the_horizon() -> None:
+    """Points of a vertical cut near the zenith are met, where a bin of the table is steepest."""
+    pattern = zigzag()
     rng = np.random.default_rng(2)
     azimuths, elevations = rng.uniform(0.0, 360.0, 40_000), rng.uniform(60.0, 80.0, 40_000)
     table = gain_table(pattern, azimuth_deg=0.0)
     error = np.abs(looked_up(table, azimuths, elevations) - pattern.gain(azimuths, elevations))
     assert error.max() <= 0.05
+
+
+def test_a_table_that_would_be_too_large_does_without_nodes_at_corners(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """Beyond the limit no node lies halfway between two multiples of 1/32 degree."""
+
+    def halfway() -> bool:
+        nodes = np.concatenate(lookup._nodes(zigzag(), 0.0)) * BINS_PER_DEG
+        return bool((nodes != np.round(nodes)).any())
+
+    assert halfway()
+    monkeypatch.setattr(lookup, "MOST_NODES", 1_000)
+    assert not halfway()
+    monkeypatch.undo()
+    monkeypatch.setattr(lookup, "MOST_IN_A_ROW", 100)
+    assert not halfway()
 
 
 @pytest.mark.parametrize("tilt_deg", [0.0, 5.0])

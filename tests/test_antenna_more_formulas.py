@@ -317,7 +317,7 @@ def test_omnidirectional_wrong_values() -> None:
         "antenna.whip.elevation_beamwidth_deg: found 95; allowed: 0.5 to below 90 deg for F.1336-5 "
         "omnidirectional",
         "antenna.whip.k: found 2; allowed: 0 to 1",
-        "antenna.whip.side_lobes: found 'both'; allowed: \"average\" or \"peak\"",
+        'antenna.whip.side_lobes: found \'both\'; allowed: "average" or "peak"',
     ]
 
 

@@ -160,7 +160,13 @@ G1 up to 12.02 (D/lambda)^-0.6 deg, 29 - 25 log phi, -13 from 48 deg |
         )
         if self.diameter_m is not None:
             problems += range_problems(
-                self.name, "diameter_m", self.diameter_m, 0.0, LARGEST_DIAMETER_M, unit="m", above=True
+                self.name,
+                "diameter_m",
+                self.diameter_m,
+                0.0,
+                LARGEST_DIAMETER_M,
+                unit="m",
+                above=True,
             )
         raise_problems(problems)
         raise_problems(self._size_problems())

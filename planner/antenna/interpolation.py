@@ -92,9 +92,7 @@ def cross_weighted_db(horizontal_db: Levels, vertical_db: Levels) -> Levels:
     both = (horizontal_weight**power + vertical_weight**power) ** (1.0 / power)
     level_db = horizontal_db * horizontal_weight + vertical_db * vertical_weight
     # Both weights vanish at the peak alone, and where both cuts are as good as nothing.
-    return np.where(
-        both > _TINY, level_db / np.maximum(both, _TINY), horizontal_db + vertical_db
-    )
+    return np.where(both > _TINY, level_db / np.maximum(both, _TINY), horizontal_db + vertical_db)
 
 
 def summed_db(horizontal_db: Levels, vertical_db: Levels) -> Levels:

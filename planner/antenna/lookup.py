@@ -29,11 +29,14 @@ ROUND_STEP_DEG, ROUND_OUT_TO_DEG = 0.25, 60.0  # of round patterns: their bends 
 TALL_DEG = 40.0  # beams taller than this may have bends that wander far sideways as they rise
 BEND_REACH = 0.08  # of a beamwidth: bends may move so far between two sampled cuts
 SEAM_DEG = -90.0  # azimuth offset at which the table begins, and ends one turn later
+MOST_NODES = 64_000_000  # of a table with nodes halfway about corners: 4 bytes each
+_ROWS_AT_ONCE = 64
 BINS_PER_QUARTER = 8192  # of a turn in azimuth; and of the sine of the elevation from 0 to 1
 
 # Packed so that one load brings two neighbours: a load from a table is what a cell costs most.
 LEVEL_STEPS_PER_DB = 256  # 16 bits a level, so down to 256 dB below the peak
-PLACE_STEPS_PER_NODE = 256  # 22 bits a place, for up to 16,384 nodes, and 10 bits a bin's length
+PLACE_STEPS_PER_NODE = 256  # 22 bits a place and 10 bits a bin's length
+MOST_IN_A_ROW = 16_000  # places of 22 bits hold 16,384
 LENGTH_BITS = 10  # so that a bin may span nearly 4 nodes: the steepest ones are that long
 
 # In float32, so that kernels stay in float32; a wider argument makes the result wider.
@@ -180,18 +183,24 @@ def gain_table(
     -----
     Within 30 dB of the peak the table is within 0.05 dB of the exact gain, save where a formula
     itself steps (ITU-R F.1336 does by 0.1 to 0.3 dB, at the join of main beam and side lobes):
-    there the step is drawn out over 1/32 degree. At the antenna's own zenith and nadir, where a
-    gain may depend on an azimuth that has no meaning there, nothing is promised within 1.5 degrees.
+    there the step is drawn out over 1/32 degree. So are the corners of dishes narrower than 3
+    degrees, and with an error of up to 0.25 dB, and those of cuts that are measured every tenth of
+    a degree and noisy: a table of all their corners would be too large. At the antenna's own zenith
+    and nadir, where a gain may depend on an azimuth that has no meaning there, nothing is promised
+    within 1.5 degrees.
     """
     checked_tilt(mechanical_downtilt_deg)
     if electrical_downtilt_deg is None:
         electrical_downtilt_deg = pattern.electrical_downtilt_deg
     azimuths, elevations = _nodes(pattern, electrical_downtilt_deg)
-    gain_dbi = pattern.gain(
-        azimuths[np.newaxis, :],
-        elevations[:, np.newaxis],
-        electrical_downtilt_deg=electrical_downtilt_deg,
-    )
+    gain_dbi = np.empty((elevations.size, azimuths.size), dtype=np.float32)
+    for first in range(0, elevations.size, _ROWS_AT_ONCE):  # a pattern needs much memory
+        rows = slice(first, first + _ROWS_AT_ONCE)
+        gain_dbi[rows] = pattern.gain(
+            azimuths[np.newaxis, :],
+            elevations[rows, np.newaxis],
+            electrical_downtilt_deg=electrical_downtilt_deg,
+        )
     sines = np.arange(-BINS_PER_QUARTER, BINS_PER_QUARTER + 1) / BINS_PER_QUARTER
     ahead = np.concatenate((1.0 - np.abs(sines), np.abs(sines[1:]) - 1.0))
     right = np.concatenate((sines, -sines[1:]))
@@ -212,11 +221,18 @@ def gain_table(
     )
 
 
-def _packed_levels(gain_dbi: NDArray[np.float64]) -> NDArray[np.uint32]:
+def _packed_levels(gain_dbi: NDArray[np.float32]) -> NDArray[np.uint32]:
     """Levels below the peak in whole steps, each with its neighbour to the right; ends repeated."""
-    steps = np.round((gain_dbi.max() - gain_dbi) * LEVEL_STEPS_PER_DB)
-    steps = np.pad(np.minimum(steps, 65535.0).astype(np.uint32), ((0, 1), (0, 2)), mode="edge")
-    return steps[:, :-1] << 16 | steps[:, 1:]
+    rows, cols = gain_dbi.shape
+    packed = np.empty((rows + 1, cols + 1), dtype=np.uint32)
+    peak_dbi = gain_dbi.max()
+    for first in range(0, rows, _ROWS_AT_ONCE):
+        band = gain_dbi[first : first + _ROWS_AT_ONCE]
+        steps = np.round((peak_dbi - band) * np.float32(LEVEL_STEPS_PER_DB))
+        steps = np.pad(np.minimum(steps, 65535.0).astype(np.uint32), ((0, 0), (0, 2)), mode="edge")
+        packed[first : first + band.shape[0]] = steps[:, :-1] << 16 | steps[:, 1:]
+    packed[rows] = packed[rows - 1]
+    return packed
 
 
 def _packed_places(
@@ -260,10 +276,11 @@ def _nodes(
         for start_deg, steps_deg in ((SEAM_DEG, across), (-90.0, along)):
             inside = np.abs(start_deg + np.arange(steps_deg.size) * bin_deg) < ROUND_OUT_TO_DEG
             steps_deg[inside] = np.minimum(steps_deg[inside], ROUND_STEP_DEG)
-    return (
-        _with_corners(_placed(SEAM_DEG, across), level),
-        _with_corners(_placed(-90.0, along), upright),
-    )
+    around, upwards = _placed(SEAM_DEG, across), _placed(-90.0, along)
+    finer_around, finer_upwards = _with_corners(around, level), _with_corners(upwards, upright)
+    if finer_around.size * finer_upwards.size > MOST_NODES or finer_around.size > MOST_IN_A_ROW:
+        return around, upwards  # measured finely and noisy: a corner at each bin
+    return finer_around, finer_upwards
 
 
 def _sampled_cuts_deg(

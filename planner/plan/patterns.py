@@ -38,25 +38,21 @@ def built_patterns(findings: Findings, rest: Rest) -> dict[tuple[str, str], Patt
     return patterns
 
 
-def _check_tilts(
-    findings: Findings, rest: Rest, patterns: dict[tuple[str, str], Pattern]
-) -> None:
+def _check_tilts(findings: Findings, rest: Rest, patterns: dict[tuple[str, str], Pattern]) -> None:
     """Electrical tilts that an antenna cannot have."""
     for number, tower in enumerate(rest.get("tower") or []):
         for place, sector in enumerate((tower or {}).get("sector") or []):
-            pattern = patterns.get(((sector or {}).get("antenna"), (sector or {}).get("radio")))
-            tilt_deg = (sector or {}).get("electrical_downtilt_deg")
-            if pattern is None or tilt_deg is None:
+            keys: Rest = sector or {}
+            antenna_and_radio: Any = keys.get("antenna"), keys.get("radio")
+            tilt_deg = keys.get("electrical_downtilt_deg")
+            if antenna_and_radio not in patterns or tilt_deg is None:
                 continue
             try:
-                pattern.steering_deg(tilt_deg)
+                patterns[antenna_and_radio].steering_deg(tilt_deg)
             except PatternError as error:
+                location = ("tower", number, "sector", place, "electrical_downtilt_deg")
                 for problem in error.problems:
-                    findings.add(
-                        ("tower", number, "sector", place, "electrical_downtilt_deg"),
-                        found=problem.found,
-                        allowed=problem.allowed,
-                    )
+                    findings.add(location, found=problem.found, allowed=problem.allowed)
 
 
 def _pairs(rest: Rest, antennas: Rest, radios: Rest) -> list[tuple[Any, Any]]:

@@ -71,7 +71,7 @@ def _number(
 
 
 def _listed(words: Sequence[str]) -> str:
-    """"a", "b" or "c"."""
+    """ "a", "b" or "c"."""
     quoted = [f'"{word}"' for word in words]
     return " or ".join((", ".join(quoted[:-1]), quoted[-1]))
 
