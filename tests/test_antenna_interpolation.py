@@ -124,7 +124,8 @@ def test_steered_cuts_against_a_steered_array(downtilt_deg: float) -> None:
 
 def test_the_table_of_the_page() -> None:
     """docs/models.md holds what the study finds, but for the last digit."""
-    rows = list(study_table())
+    heading, _, *rows = study_table()
+    assert heading in MODELS.splitlines()
     number = re.compile(r"[-+]?\d+\.?\d*")
     for row in rows:
         name = row.split("|")[1]
@@ -133,9 +134,6 @@ def test_the_table_of_the_page() -> None:
             if line.startswith(f"|{name}|") and line.split("|")[2] == row.split("|")[2]
         ]  # fmt: skip
         for cell, shown in zip(row.split("|")[3:-1], printed.split("|")[3:-1], strict=True):
-            if not number.search(cell):
-                assert cell == shown
-                continue
             found = [float(text) for text in number.findall(cell)]
             expected = [float(text) for text in number.findall(shown)]
             tolerance = np.array([0.011, 0.11, 0.11, 1.1, 0.011])

@@ -114,6 +114,19 @@ def test_small_dishes_by_hand(recommendation: str, off_axis: float, expected: fl
     assert expected == pytest.approx(float(pattern.gain(off_axis, 0.0)), abs=1e-5)
 
 
+def test_first_side_lobe_of_a_large_dish() -> None:
+    """138.0955 wavelengths across: F.1245 keeps G1 = 34.1029 dBi up to 0.6249 degrees."""
+    pattern = dish("F.1245", frequency_mhz=23000.0, diameter_m=1.8, gain_dbi=50.5)
+    edge_deg = 12.02 * 138.095535**-0.6
+    assert edge_deg == pytest.approx(0.6249, abs=1e-4)
+    for off_axis, expected in (
+        (0.62, 2.0 + 15.0 * math.log10(138.095535)),
+        (0.63, 29.0 - 25.0 * math.log10(0.63)),
+        (100.0, -13.0),
+    ):
+        assert expected == pytest.approx(float(pattern.gain(off_axis, 0.0)), abs=1e-5)
+
+
 def test_forms_of_dishes_meet_at_100_wavelengths() -> None:
     """Beyond the first side lobe both forms agree at D/lambda = 100, and pieces join at 48 deg."""
     for formula in (f699_gain_dbi_scalar, f1245_gain_dbi_scalar):
@@ -276,6 +289,7 @@ def test_tr38901_table(azimuth: float, zenith: float, expected: float) -> None:
         ("peak", 0.7, 21.52, -12.0 + 10.0 * math.log10(2.0**-1.5 + 0.7)),
         ("peak", 0.0, 43.04, -12.0 - 15.0 * math.log10(4.0)),
         ("average", 0.7, 10.5, -12.0 * (10.5 / 10.76) ** 2),
+        ("average", 0.0, 11.836, -12.0 * 1.1**2),  # up to 1.118 widths
         ("average", 0.7, 21.52, -15.0 + 10.0 * math.log10(2.0**-1.5 + 0.7)),
         ("average", 0.0, 43.04, -15.0 - 15.0 * math.log10(4.0)),
     ],
