@@ -4,10 +4,14 @@ import pytest
 
 from planner.antenna import (
     FORMULAS,
+    Dish,
+    F1336Omnidirectional,
     F1336Sector,
     Isotropic,
+    M2101Array,
     Pattern,
     Tr36814Sector,
+    Tr38901Element,
     formula_pattern,
 )
 from planner.errors import PatternError
@@ -24,16 +28,78 @@ def problems(formula: str, **changed: object) -> list[str]:
     return [str(problem) for problem in caught.value.problems]
 
 
+BEAMS = {"azimuth_beamwidth_deg": 90.0, "elevation_beamwidth_deg": 7.0}
+GIVEN: dict[str, dict[str, object]] = {
+    "F.1336-5": BEAMS,
+    "F.1336-5 omnidirectional": {"elevation_beamwidth_deg": 7.0, "side_lobes": "peak", "k": 0.3},
+    "F.699": {"gain_dbi": 28.0, "diameter_m": 0.6},
+    "F.1245": {"gain_dbi": 28.0, "diameter_m": 0.6},
+    "TR 36.814": BEAMS,
+    "TR 38.901": {"gain_dbi": 7.0, "front_to_back_db": 25.0},
+    "M.2101": {
+        "gain_dbi": 20.0, "rows": 8, "columns": 2, "row_spacing_wavelengths": 0.7,
+        "column_spacing_wavelengths": 0.6, "beam_azimuth_offset_deg": 5.0,
+        "element_azimuth_beamwidth_deg": 80.0, "element_elevation_beamwidth_deg": 70.0,
+        "front_to_back_db": 28.0, "side_lobe_db": 27.0,
+    },
+    "isotropic": {},
+}  # fmt: skip
+
+
 def test_each_name_gives_its_pattern() -> None:
-    """The three names lead to the three patterns, with the values passed on."""
-    beams = {"azimuth_beamwidth_deg": 90.0, "elevation_beamwidth_deg": 7.0}
-    expected: tuple[Pattern, ...] = (
-        F1336Sector(name="panel", gain_dbi=17.0, frequency_mhz=5600.0, **beams),
-        Tr36814Sector(name="panel", gain_dbi=17.0, **beams),
-        Isotropic(name="panel", gain_dbi=17.0),
+    """Each name leads to its pattern, with the values passed on."""
+    common: dict[str, object] = {"name": "panel", "gain_dbi": 17.0}
+    at_frequency = common | {"frequency_mhz": 5600.0}
+    expected: dict[str, Pattern] = {
+        "F.1336-5": F1336Sector(**(at_frequency | BEAMS)),
+        "F.1336-5 omnidirectional": F1336Omnidirectional(
+            **(at_frequency | GIVEN["F.1336-5 omnidirectional"])
+        ),
+        "F.699": Dish(recommendation="F.699", **(at_frequency | GIVEN["F.699"])),
+        "F.1245": Dish(recommendation="F.1245", **(at_frequency | GIVEN["F.1245"])),
+        "TR 36.814": Tr36814Sector(**(common | BEAMS)),
+        "TR 38.901": Tr38901Element(**(common | GIVEN["TR 38.901"])),
+        "M.2101": M2101Array(**(common | GIVEN["M.2101"])),
+        "isotropic": Isotropic(**common),
+    }
+    assert tuple(expected) == FORMULAS
+    assert expected == {name: made(name, **given) for name, given in GIVEN.items()}
+    for name, pattern in expected.items():
+        for key, value in GIVEN[name].items():
+            assert value == getattr(pattern, key)
+
+
+def test_elevation_beamwidth_of_an_omnidirectional_antenna() -> None:
+    """It follows from the gain if left out, 107.6 * 10^(-0.1 G0), and the notes say so."""
+    pattern = made("F.1336-5 omnidirectional", gain_dbi=10.0)
+    assert pattern.elevation_beamwidth_deg == pytest.approx(10.76)
+    assert pattern.notes == (
+        "Elevation beamwidth not given: 10.76 degrees estimated from the gain (ITU-R F.1336-5).",
     )
-    assert FORMULAS == ("F.1336-5", "TR 36.814", "isotropic")
-    assert expected == (made("F.1336-5", **beams), made("TR 36.814", **beams), made("isotropic"))
+    assert problems("F.1336-5 omnidirectional", gain_dbi=0.0) == [
+        "antenna.panel.elevation_beamwidth_deg: found nothing; allowed: a beamwidth in degrees: "
+        "the estimate from 0 dBi is 108 deg, outside 0.5 to below 90 deg"
+    ]
+
+
+def test_factors_without_effect_are_noted() -> None:
+    """Above 6 GHz F.1336-5 has no k factors; given all the same, the notes say so."""
+    pattern = made("F.1336-5", frequency_mhz=11000.0, k_h=0.7, k_v=0.3, **BEAMS)
+    assert pattern.notes == (
+        "k_h, k_v: without effect above 6000 MHz (ITU-R F.1336-5, recommends 3.2).",
+    )
+    assert made("F.1336-5", k_h=0.7, **BEAMS).notes == ()
+
+
+def test_array_without_rows() -> None:
+    """What is missing is told beside what is wrong."""
+    assert problems("M.2101", columns=8, row_spacing_wavelengths=5.0, diameter_m=0.6) == [
+        'antenna.panel.diameter_m: found 0.6; allowed: nothing: the formula "M.2101" has no '
+        "diameter_m. Leave the key out or choose another formula",
+        'antenna.panel.rows: found nothing; allowed: a whole number, which the formula "M.2101" '
+        "needs",
+        "antenna.panel.row_spacing_wavelengths: found 5; allowed: 0.1 to 2",
+    ]
 
 
 def test_the_formulas_own_values_are_passed_on() -> None:
@@ -76,7 +142,8 @@ def test_no_estimate_outside_the_formula() -> None:
 def test_unknown_formula() -> None:
     """An unknown name is told with the names that exist."""
     assert problems("F.1336-4") == [
-        'antenna.panel.formula: found \'F.1336-4\'; allowed: "F.1336-5", "TR 36.814", "isotropic"'
+        'antenna.panel.formula: found \'F.1336-4\'; allowed: "F.1336-5", "F.1336-5 '
+        'omnidirectional", "F.699", "F.1245", "TR 36.814", "TR 38.901", "M.2101", "isotropic"'
     ]
 
 

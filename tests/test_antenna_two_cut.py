@@ -1,9 +1,12 @@
 """Patterns put together from a horizontal and a vertical cut."""
 
+import math
+
 import numpy as np
 import pytest
 
-from planner.antenna import TwoCutPattern, half_power_edges_deg, two_cut_pattern
+from planner.antenna import TwoCutPattern, gain_table, half_power_edges_deg, two_cut_pattern
+from planner.antenna.two_cut import REAR_NOTE
 from planner.errors import PatternError
 
 # An invented antenna: points every 10 degrees, left and right different, a built-in beam tilt.
@@ -43,9 +46,9 @@ def test_points_of_both_cuts_come_back() -> None:
         assert 15.0 + level == float(lopsided().gain(0.0, angle))
 
 
-def test_off_the_cuts_levels_are_added() -> None:
-    """Off the cuts the levels of both are summed, in dB."""
-    assert float(lopsided().gain(60.0, 10.0)) == 15.0 - 8.0 - 14.0
+def test_off_the_cuts_levels_are_added_if_wanted() -> None:
+    """With "sum" the levels of both cuts are summed, in dB."""
+    assert float(lopsided(interpolation="sum").gain(60.0, 10.0)) == 15.0 - 8.0 - 14.0
 
 
 def test_interpolation_is_linear_in_db() -> None:
@@ -128,21 +131,92 @@ def test_beam_across_the_seam() -> None:
 
 
 def test_electrical_tilt_shifts_the_vertical_cut() -> None:
-    """3 degrees of electrical downtilt move the vertical cut 3 degrees down, at all azimuths."""
-    azimuths, elevations = np.meshgrid(np.arange(-180.0, 180.0, 20.0), np.arange(-80.0, 80.0, 0.7))
+    """3 degrees of electrical downtilt move the vertical cut 3 degrees down, at all azimuths.
+
+    From 45 degrees off the horizon the shift fades.
+    """
+    azimuths, elevations = np.meshgrid(np.arange(-180.0, 180.0, 20.0), np.arange(-42.0, 48.0, 0.7))
     expected = lopsided().gain(azimuths, elevations)
     actual = lopsided().gain(azimuths, elevations - 3.0, electrical_downtilt_deg=3.0)
     np.testing.assert_allclose(expected, actual, rtol=0, atol=1e-12)
 
 
-def test_beyond_the_zenith() -> None:
-    """Tilted past the end of the vertical cut, the end's level holds, or the file's own beyond."""
-    assert float(lopsided().gain(0.0, 88.0, electrical_downtilt_deg=10.0)) == 15.0 - 30.0
-    whole = {**VERTICAL, 120: -20.0, 150: -25.0, 180: -28.0, -120: -27.0, -150: -26.0}
+@pytest.mark.parametrize("tilt_deg", [-45.0, -10.0, 6.0, 45.0])
+def test_steering_keeps_the_poles_and_the_order(tilt_deg: float) -> None:
+    """Straight up and down stay where they are, and no elevation overtakes another."""
+    for elevation in (-90.0, 90.0):
+        tilted = lopsided().gain(50.0, elevation, electrical_downtilt_deg=tilt_deg)
+        assert float(lopsided().gain(50.0, elevation)) == pytest.approx(float(tilted))
+    rising = {-90: -90.0, -60: -60.0, -30: -30.0, 0: 0.0, 30: 0.0, 60: 0.0, 90: 0.0}
+    elevations = np.linspace(-90.0, 90.0, 721)
+    ramp = lopsided(vertical_angle_deg=list(rising), vertical_level_db=list(rising.values()))
+    assert (np.diff(ramp.gain(0.0, elevations, electrical_downtilt_deg=tilt_deg)) > -1e-12).all()
+
+
+def test_a_tilt_that_the_cuts_carry_is_not_applied_again() -> None:
+    """The tilt asked for is the whole tilt; only what the cuts lack is steered."""
+    elevations = np.arange(-40.0, 40.0, 0.7)
+    carrying = lopsided(electrical_downtilt_deg=4.0)
+    as_it_is = lopsided().gain(10.0, elevations)
+    np.testing.assert_array_equal(as_it_is, carrying.gain(10.0, elevations))
+    same = carrying.gain(10.0, elevations, electrical_downtilt_deg=4.0)
+    np.testing.assert_array_equal(as_it_is, same)
+    two_more = carrying.gain(10.0, elevations - 2.0, electrical_downtilt_deg=6.0)
+    np.testing.assert_allclose(as_it_is, two_more, rtol=0, atol=1e-12)
+    with pytest.raises(PatternError) as caught:
+        lopsided(electrical_downtilt_deg=-10.0).gain(0.0, 0.0, electrical_downtilt_deg=40.0)
+    assert str(caught.value) == (
+        "electrical_downtilt_deg: found 40; allowed: at most 45 deg from the -10 deg that antenna "
+        "lopsided carries already"
+    )
+
+
+def test_table_and_edges_take_a_carried_tilt_once() -> None:
+    """Gain table and half-power edges treat a carried tilt as the pattern does."""
+    carrying = lopsided(electrical_downtilt_deg=4.0)
+    table = gain_table(carrying, azimuth_deg=0.0)
+    assert table.electrical_downtilt_deg == 4.0
+    expected = gain_table(lopsided(), azimuth_deg=0.0).arrays
+    np.testing.assert_array_equal(expected.levels, table.arrays.levels)
+    assert half_power_edges_deg(lopsided()) == half_power_edges_deg(carrying)
+
+
+def test_the_half_behind_the_antenna() -> None:
+    """The file's own points behind count; without them the half is made up, which is noted."""
+    whole = {
+        **VERTICAL, 120: -20.0, 150: -25.0, 180: -30.0, -178: -30.0, -120: -27.0, -150: -26.0,
+    }  # fmt: skip
     around = lopsided(vertical_angle_deg=list(whole.keys()), vertical_level_db=list(whole.values()))
-    actual = float(around.gain(0.0, 88.0, electrical_downtilt_deg=10.0))
-    assert actual == pytest.approx(15.0 - 30.0 + 10.0 * 8.0 / 30.0)
+    assert around.notes == ()
     assert around.elevation_beamwidth_deg == lopsided().elevation_beamwidth_deg
+    for angle, level in ((120, -20.0), (150, -25.0), (-120, -27.0)):
+        behind = float(around.gain(180.0, math.copysign(180.0, angle) - angle))
+        assert behind == pytest.approx(15.0 + level)
+    assert lopsided().notes == (REAR_NOTE,)
+    for elevation in (-50.0, -10.0, 0.0, 30.0, 80.0):
+        assert float(lopsided().gain(180.0, elevation)) == pytest.approx(15.0 - 30.0, abs=0.1)
+
+
+def test_an_omnidirectional_antenna_is_alike_all_around() -> None:
+    """Without a half behind, the front's half stands for it as far as the antenna is as strong."""
+    pattern = lopsided(horizontal_level_db=[0.0] * len(HORIZONTAL))
+    elevations = np.arange(-90.0, 91.0, 2.0)
+    ahead = pattern.gain(0.0, elevations)
+    for azimuth in (-150.0, 40.0, 90.0, 180.0):
+        np.testing.assert_allclose(ahead, pattern.gain(azimuth, elevations), rtol=0, atol=1e-9)
+
+
+def test_kind_and_wrong_words() -> None:
+    """Two cuts are measured unless they say otherwise; unknown words and tilts are refused."""
+    assert lopsided().kind == "measured"
+    assert lopsided(kind="envelope").kind == "envelope"
+    assert problems(interpolation="cubic", kind="guess", electrical_downtilt_deg=50.0) == [
+        "antenna.lopsided.electrical_downtilt_deg: found 50; allowed: -45 to 45 deg, positive "
+        "downwards",
+        'antenna.lopsided.interpolation: found \'cubic\'; allowed: "projected", "cross-weighted", '
+        '"sum"',
+        'antenna.lopsided.kind: found \'guess\'; allowed: "envelope", "model", "measured"',
+    ]
 
 
 def test_nan_gives_nan() -> None:
@@ -166,7 +240,8 @@ def test_a_peak_between_the_points_is_raised_and_noted() -> None:
     levels = np.array(list(VERTICAL.values())) - 0.2
     pattern = lopsided(vertical_level_db=levels)
     assert float(pattern.gain(0.0, -2.0)) == pytest.approx(15.0)
-    assert pattern.notes == ("The vertical cut's highest level, -0.2 dB, was raised to 0 dB.",)
+    raised = "The vertical cut's highest level, -0.2 dB, was raised to 0 dB."
+    assert pattern.notes == (raised, REAR_NOTE)
 
 
 def test_levels_that_are_not_relative() -> None:

@@ -228,23 +228,25 @@ def test_an_envelope_is_not_judged():
     assert (figures.gain_verdict, figures.efficiency) == ("not judged", None)
 
 
-KINDS = {"F.1336-5": "envelope", "TR 36.814": "model", "isotropic": "model"}
+BEAMS = {"azimuth_beamwidth_deg": 65.0, "elevation_beamwidth_deg": 8.0}
+KINDS = {
+    "F.1336-5": ("envelope", BEAMS),
+    "F.1336-5 omnidirectional": ("envelope", {}),
+    "F.699": ("envelope", {}),
+    "F.1245": ("envelope", {}),
+    "TR 36.814": ("model", BEAMS),
+    "TR 38.901": ("model", {}),
+    "M.2101": ("model", {"rows": 4, "columns": 4}),
+    "isotropic": ("model", {}),
+}
 
 
 def test_the_kind_of_every_formula():
     """Envelopes are known as such; a new formula must be put into the table above."""
-    found = {}
-    for formula in FORMULAS:
-        beams = {"azimuth_beamwidth_deg": 65.0, "elevation_beamwidth_deg": 8.0}
-        pattern = formula_pattern(
-            "x",
-            formula,
-            frequency_mhz=5600.0,
-            gain_dbi=0.0 if formula == "isotropic" else 15.0,
-            **({} if formula == "isotropic" else beams),
-        )
-        found[formula] = pattern.kind
-    assert found == KINDS
+    assert set(KINDS) == set(FORMULAS)
+    for formula, (kind, keys) in KINDS.items():
+        pattern = formula_pattern("x", formula, frequency_mhz=5600.0, gain_dbi=11.0, **keys)
+        assert pattern.kind == kind, formula
     assert read_pattern(PANEL, name="panel", gain_dbi=17.0).kind == "measured"
 
 

@@ -7,7 +7,7 @@ import pytest
 from pattern_texts import ANGLES, ELEVATIONS, across_db, block, cut, standard, up_db, written
 from plans import changed, write_plan
 
-from planner.antenna import TotalTiltPattern, with_total_tilt
+from planner.antenna import Pattern
 from planner.errors import PatternError, PlanError
 from planner.io.pattern_files import read_pattern, read_pattern_file
 from planner.plan.read import read_plan
@@ -133,26 +133,19 @@ def test_kind(tmp_path: Path, stated: str, kind: str) -> None:
     assert read_pattern(written(tmp_path, standard(PATTYP=stated)), name="panel").kind == kind
 
 
-def peak_deg(pattern: object, tilt: float) -> float:
+def peak_deg(pattern: Pattern, tilt: float | None) -> float:
     elevations = np.arange(-90.0, 90.01, 0.5)
-    gain = pattern.gain(0.0, elevations, electrical_downtilt_deg=tilt)  # type: ignore[attr-defined]
+    gain = pattern.gain(0.0, elevations, electrical_downtilt_deg=tilt)
     return float(elevations[gain.argmax()])
 
 
 def test_a_tilt_in_the_file_is_not_applied_twice(tmp_path: Path) -> None:
     """Set to the tilt that the levels carry the beam stays; set to another it moves by the rest."""
     pattern = read_pattern(written(tmp_path, standard(block(tilt=5.0), ELTILT="5")), name="panel")
-    assert pattern.carried_downtilt_deg == 5.0
-    assert peak_deg(pattern, 0.0) == -5.0  # as the file has it
-    total = with_total_tilt(pattern)
-    assert isinstance(total, TotalTiltPattern)
-    assert (total.gain_dbi, total.name, total.kind) == (11.5, "panel", "measured")
+    assert pattern.electrical_downtilt_deg == 5.0
+    assert peak_deg(pattern, None) == -5.0  # as the file has it
     for tilt in (0.0, 5.0, 9.0):
-        assert peak_deg(total, tilt) == -tilt
-    assert "Levels measured at 5 degrees of electrical downtilt" in total.notes[-1]
-    assert with_total_tilt(total) is total
-    level = read_pattern(written(tmp_path, standard()), name="panel")
-    assert with_total_tilt(level) is level
+        assert peak_deg(pattern, tilt) == -tilt
 
 
 def test_a_tilt_that_the_levels_do_not_show(tmp_path: Path) -> None:
@@ -162,7 +155,7 @@ def test_a_tilt_that_the_levels_do_not_show(tmp_path: Path) -> None:
         (warning,) = read_pattern_file(path).warnings
         assert f"peaks at elevation {0.0 - found:g} deg, not at -5 deg as the stated" in warning
         assert ("turn their sign" in warning) == hint
-        assert read_pattern(path, name="panel").carried_downtilt_deg == 0.0
+        assert read_pattern(path, name="panel").electrical_downtilt_deg == 0.0
     path = written(tmp_path, standard(block(tilt=5.0), ELTILT=""))
     (warning,) = read_pattern_file(path).warnings
     assert "peaks at elevation -5 deg, but no electrical tilt is stated" in warning

@@ -7,6 +7,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from planner.antenna.two_cut import REAR_NOTE
 from planner.errors import PatternError
 from planner.io.pattern_files import read_pattern
 from planner.io.pattern_files.text import LARGEST_FILE_BYTES
@@ -198,4 +199,4 @@ def test_the_example_in_the_documentation(tmp_path: Path) -> None:
     pattern = read_pattern(written(tmp_path, example), name="panel", gain_dbi=16.0)
     assert (float(pattern.gain(-90.0, 0.0)), float(pattern.gain(0.0, 4.0))) == (2.0, 13.0)
     assert pattern.elevation_beamwidth_deg == 8.0
-    assert pattern.notes == ()
+    assert pattern.notes == (REAR_NOTE,)

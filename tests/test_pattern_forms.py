@@ -170,4 +170,8 @@ def test_values_stated_in_comments(tmp_path: Path) -> None:
         ("H", "H/H"), ("V", "H/H"),
     ]  # fmt: skip
     pattern = read_pattern(path, name="panel", frequency_mhz=5500.0)
-    assert (pattern.gain_dbi, pattern.kind, pattern.carried_downtilt_deg) == (12.5, "envelope", 5.0)
+    assert (pattern.gain_dbi, pattern.kind, pattern.electrical_downtilt_deg) == (
+        12.5,
+        "envelope",
+        5.0,
+    )

@@ -141,9 +141,9 @@ def test_csv_reads_back_the_same_pattern(tmp_path: Path, kind: str) -> None:
             pattern.gain(AZIMUTHS, ALL_ELEVATIONS), patterns[0].gain(AZIMUTHS, ALL_ELEVATIONS)
         )
         assert pattern.kind == patterns[0].kind
-        assert pattern.carried_downtilt_deg == patterns[0].carried_downtilt_deg
+        assert pattern.electrical_downtilt_deg == patterns[0].electrical_downtilt_deg
         assert type(pattern) is type(patterns[0])
-    assert patterns[0].carried_downtilt_deg == (5.0 if kind == "tilted" else 0.0)
+    assert patterns[0].electrical_downtilt_deg == (5.0 if kind == "tilted" else 0.0)
     assert copy.blocks[0].frequency_mhz == 5500.0
 
 

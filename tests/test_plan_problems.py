@@ -170,7 +170,8 @@ CASES = [
         "unknown formula",
         ('"F.1336-5"', '"F.1336"'),
         says=['plan.toml: antenna.panel-90.formula (line 10): found "F.1336"; '
-              'allowed: "F.1336-5", "TR 36.814" or "isotropic". Did you mean "F.1336-5"?'],
+              'allowed: "F.1336-5", "F.1336-5 omnidirectional", "F.699", "F.1245", "TR 36.814", '
+              '"TR 38.901", "M.2101" or "isotropic". Did you mean "F.1336-5"?'],
     ),
     case(
         "unknown layer, and one twice",
@@ -379,6 +380,20 @@ CASES = [
         says=['plan.toml: radio.access.frequency_mhz (line 16): found 300, used with antenna '
               '"panel-90"; allowed: 400 to 70000 MHz for F.1336-5. '
               'Use formula "TR 36.814" or a pattern file'],
+    ),
+    case(
+        "an interpolation of a formula",
+        ("gain_dbi = 17", 'gain_dbi = 17\ninterpolation = "sum"'),
+        says=['plan.toml: antenna.panel-90.interpolation (line 12): found "sum"; allowed: '
+              "nothing: a formula holds in every direction. Leave the key out"],
+    ),
+    case(
+        "a dish that is tilted electrically",
+        ('formula = "F.1336-5"\ngain_dbi = 17\nazimuth_beamwidth_deg = 90\n'
+         "elevation_beamwidth_deg = 7", 'formula = "F.699"\ngain_dbi = 28\ndiameter_m = 0.6'),
+        ("azimuth_deg = 140", "azimuth_deg = 140\nelectrical_downtilt_deg = 3"),
+        says=["plan.toml: tower.0.sector.1.electrical_downtilt_deg (tower west, sector west-2, "
+              "line 46): found 3; allowed: 0 deg: antenna panel-90 has no electrical tilt"],
     ),
     case(
         "an antenna that no sector uses",

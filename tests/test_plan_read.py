@@ -2,15 +2,17 @@
 
 import datetime
 import hashlib
-from dataclasses import FrozenInstanceError
+from dataclasses import FrozenInstanceError, replace
 from pathlib import Path
+from typing import Any
 
 import pytest
 from plans import PLAN, changed, write_plan
 from pyproj import Transformer
 
-from planner.antenna import F1336Sector, Tr36814Sector, TwoCutPattern
+from planner.antenna import Dish, F1336Sector, M2101Array, Tr36814Sector, TwoCutPattern
 from planner.errors import PlanError
+from planner.io.pattern_files import pattern_of
 from planner.io.terrain_files import TerrainSource
 from planner.network import Radio, Sector, Terminal
 from planner.plan import EirpExcess, eirp_excesses, read_plan
@@ -213,23 +215,66 @@ def test_other_spellings_of_the_same_file(tmp_path: Path) -> None:
 
 
 def test_pattern_file(tmp_path: Path) -> None:
-    """An antenna may be a file of two cuts, good for all radios; the plan names the file."""
-    rows = ["cut,angle_deg,level_db"]
-    for cut in ("h", "v"):
-        rows += [f"{cut},{angle},{-min(30, abs(angle) // 4)}" for angle in range(-180, 180, 10)]
-    (tmp_path / "panel.csv").write_text("\n".join(rows) + "\n", encoding="utf-8")
-    text = changed(
-        ('formula = "F.1336-5"', 'file = "panel.csv"'),
-        ("azimuth_beamwidth_deg = 90\nelevation_beamwidth_deg = 7\n", ""),
+    """An antenna may be a file of two cuts, read once for all radios; the plan names the file."""
+    path = two_cut_plan(
+        tmp_path,
         ("[terminal]", UPPER_RADIO + "[terminal]"),
         (SECOND_SECTOR, SECOND_SECTOR.replace("access", "upper")),
     )
-    plan = read_plan(write_plan(tmp_path, text))
+    plan = read_plan(path)
     pattern = plan.patterns["west-1"]
     assert isinstance(pattern, TwoCutPattern)
     assert (pattern.name, pattern.gain_dbi) == ("panel-90", 17.0)
     assert isinstance(plan.patterns["west-2"], TwoCutPattern)
     assert plan.pattern_files == (tmp_path / "panel.csv",)
+
+
+def two_cut_plan(folder: Path, *changes: tuple[str, str]) -> Path:
+    rows = ["cut,angle_deg,level_db"]
+    for cut in ("h", "v"):
+        rows += [f"{cut},{angle},{-min(30, abs(angle) // 4)}" for angle in range(-180, 180, 10)]
+    (folder / "panel.csv").write_text("\n".join(rows) + "\n", encoding="utf-8")
+    text = changed(
+        ('formula = "F.1336-5"', 'file = "panel.csv"'),
+        ("azimuth_beamwidth_deg = 90\nelevation_beamwidth_deg = 7\n", ""),
+        *changes,
+    )
+    return write_plan(folder, text)
+
+
+def test_interpolation_of_two_cuts(tmp_path: Path) -> None:
+    """The plan says how two cuts are put together; left out, they are projected."""
+    assert read_plan(two_cut_plan(tmp_path)).patterns["west-1"].interpolation == "projected"
+    asked = ("gain_dbi = 17", 'gain_dbi = 17\ninterpolation = "cross-weighted"')
+    plan = read_plan(two_cut_plan(tmp_path, asked))
+    assert plan.patterns["west-1"].interpolation == "cross-weighted"
+
+
+def test_electrical_tilt_left_out_is_what_the_file_carries(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """A sector without an electrical tilt has its pattern's own; one that is given outranks it."""
+
+    def tilted(*args: Any, **kwargs: Any) -> TwoCutPattern:
+        return replace(pattern_of(*args, **kwargs), electrical_downtilt_deg=4.0)
+
+    monkeypatch.setattr("planner.plan.patterns.pattern_of", tilted)
+    asked = ("azimuth_deg = 140", "azimuth_deg = 140\nelectrical_downtilt_deg = 0")
+    [tower] = read_plan(two_cut_plan(tmp_path, asked)).towers
+    assert [sector.electrical_downtilt_deg for sector in tower.sectors] == [4.0, 0.0]
+
+
+def test_array_and_dish(tmp_path: Path) -> None:
+    """Whole numbers of rows and columns stay whole, and a diameter may be one."""
+    beams = ('formula = "F.1336-5"\ngain_dbi = 17\nazimuth_beamwidth_deg = 90\n'
+             "elevation_beamwidth_deg = 7")  # fmt: skip
+    text = changed((beams, 'formula = "M.2101"\ngain_dbi = 20\nrows = 8\ncolumns = 2'))
+    pattern = read_plan(write_plan(tmp_path, text)).patterns["west-1"]
+    assert pattern == M2101Array(name="panel-90", gain_dbi=20.0, rows=8, columns=2)
+    text = changed((beams, 'formula = "F.1245"\ngain_dbi = 32\ndiameter_m = 1'))
+    pattern = read_plan(write_plan(tmp_path, text)).patterns["west-1"]
+    assert isinstance(pattern, Dish)
+    assert (pattern.recommendation, pattern.diameter_m) == ("F.1245", 1.0)
 
 
 def test_eirp_excess(tmp_path: Path) -> None:

@@ -5,26 +5,33 @@ Downtilt is positive downwards; mechanical tilt turns the antenna, electrical ti
 """
 
 from planner.antenna.beamwidth import half_power_edges_deg
+from planner.antenna.dish import Dish
 from planner.antenna.f1336 import estimated_elevation_beamwidth_deg
+from planner.antenna.f1336_omni import F1336Omnidirectional
 from planner.antenna.f1336_sector import F1336Sector
 from planner.antenna.formula import FORMULAS, formula_pattern
 from planner.antenna.grid_pattern import GridPattern, grid_pattern
 from planner.antenna.lookup import GainTable, gain_table
+from planner.antenna.m2101 import M2101Array
 from planner.antenna.mounting import antenna_direction_deg, mounted_gain_dbi
-from planner.antenna.pattern import Isotropic, Pattern
-from planner.antenna.total_tilt import TotalTiltPattern, with_total_tilt
+from planner.antenna.pattern import Isotropic, Pattern, PatternKind
 from planner.antenna.tr36814 import Tr36814Sector
+from planner.antenna.tr38901 import Tr38901Element
 from planner.antenna.two_cut import TwoCutPattern, two_cut_pattern
 
 __all__ = [
     "FORMULAS",
+    "Dish",
+    "F1336Omnidirectional",
     "F1336Sector",
     "GainTable",
     "GridPattern",
     "Isotropic",
+    "M2101Array",
     "Pattern",
-    "TotalTiltPattern",
+    "PatternKind",
     "Tr36814Sector",
+    "Tr38901Element",
     "TwoCutPattern",
     "antenna_direction_deg",
     "estimated_elevation_beamwidth_deg",
@@ -34,5 +41,4 @@ __all__ = [
     "half_power_edges_deg",
     "mounted_gain_dbi",
     "two_cut_pattern",
-    "with_total_tilt",
 ]

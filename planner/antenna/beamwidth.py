@@ -14,15 +14,15 @@ HALVINGS = 40  # of a scan step: far below a millionth of a degree
 
 
 def half_power_edges_deg(
-    pattern: Pattern, *, electrical_downtilt_deg: float = 0.0
+    pattern: Pattern, *, electrical_downtilt_deg: float | None = None
 ) -> tuple[float, float]:
     """Azimuth offsets left and right of the peak where the gain is 3 dB below it. [deg]
 
     Parameters
     ----------
     pattern : Pattern
-    electrical_downtilt_deg : float
-        Positive downwards. [deg]
+    electrical_downtilt_deg : float or None
+        Positive downwards; None: what the pattern carries. [deg]
 
     Returns
     -------
@@ -36,7 +36,7 @@ def half_power_edges_deg(
     """
     elevations = np.arange(-90.0, 90.0 + SCAN_STEP_DEG, SCAN_STEP_DEG).clip(-90.0, 90.0)
     upright = pattern.gain(0.0, elevations, electrical_downtilt_deg=electrical_downtilt_deg)
-    elevation_deg = _middle_of_peak(elevations, upright)
+    elevation_deg = middle_of_peak_deg(elevations, upright)
 
     def gain(azimuth_deg: float | NDArray[np.float64]) -> NDArray[np.float64]:
         return pattern.gain(
@@ -45,7 +45,7 @@ def half_power_edges_deg(
 
     offsets = np.arange(-180.0, 180.0, SCAN_STEP_DEG)
     levels = gain(offsets)
-    peak_deg = _middle_of_peak(offsets, levels)
+    peak_deg = middle_of_peak_deg(offsets, levels)
     wanted_dbi = float(levels.max()) - HALF_POWER_DB
     around = np.arange(0.0, 360.0, SCAN_STEP_DEG)
     edges = []
@@ -81,7 +81,7 @@ def half_power_beamwidth_deg(
     float. The whole span of the cut where it never falls by 3 dB; in a cut that does not close,
     an end of the cut counts as an edge.
     """
-    peak_deg = _middle_of_peak(angle_deg, level_db)
+    peak_deg = middle_of_peak_deg(angle_deg, level_db)
     wanted_db = float(level_db.max()) - HALF_POWER_DB
     span_deg = float(angle_deg[-1] - angle_deg[0])
     if around:
@@ -109,8 +109,8 @@ def half_power_beamwidth_deg(
     return min(width_deg, span_deg)
 
 
-def _middle_of_peak(angle_deg: NDArray[np.float64], level_db: NDArray[np.float64]) -> float:
-    """Angle of the highest level; the middle of its neighbours where several are as high."""
+def middle_of_peak_deg(angle_deg: NDArray[np.float64], level_db: NDArray[np.float64]) -> float:
+    """Angle of the highest level of a cut; the middle where several neighbours are as high."""
     first = int(np.argmax(level_db))
     last = first
     while last + 1 < level_db.size and level_db[last + 1] >= level_db[first] - 1e-9:

@@ -1,6 +1,6 @@
 """A sectoral antenna after ITU-R F.1336-5 as a pattern object."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Literal
 
 import numpy as np
@@ -62,7 +62,7 @@ class F1336Sector(Pattern):
     ITU-R F.1336-5 (2019), recommends 3.1 and 3.2, recalled from memory.
     """
 
-    kind: PatternKind = "envelope"
+    kind: PatternKind = field(init=False, default="envelope")
     frequency_mhz: float
     side_lobes: Literal["average", "peak"] = "average"
     k_p: float = 0.7  # relative minimum gain of the peak form
@@ -113,14 +113,13 @@ class F1336Sector(Pattern):
         azimuth_offset_deg: ArrayLike,
         elevation_deg: ArrayLike,
         *,
-        electrical_downtilt_deg: float = 0.0,
+        electrical_downtilt_deg: float | None = None,
     ) -> NDArray[np.float64]:
         """Gain towards a direction: see :meth:`Pattern.gain`."""
-        azimuth_deg, elevation = checked_angles(
-            azimuth_offset_deg, elevation_deg, electrical_downtilt_deg
-        )
+        steering_deg = self.steering_deg(electrical_downtilt_deg)
+        azimuth_deg, elevation = checked_angles(azimuth_offset_deg, elevation_deg)
         with np.errstate(invalid="ignore"):  # comparing NaN in a compiled loop may raise the flag
-            elevation = _electrical_elevation_deg(elevation, electrical_downtilt_deg)
+            elevation = _electrical_elevation_deg(elevation, steering_deg)
             if self.frequency_mhz > BOUNDARY_FREQUENCY_MHZ:
                 return self._above_6_ghz_gain(azimuth_deg, elevation)
             return self._up_to_6_ghz_gain(azimuth_deg, elevation)

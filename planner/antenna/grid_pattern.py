@@ -36,6 +36,8 @@ class GridPattern(Pattern):
     up and down it is our convention.
     """
 
+    kind: PatternKind = "measured"
+    electrical_downtilt_deg: float = 0.0
     azimuth_deg: NDArray[np.float64]  # of n, -180 to 180 with both ends, increasing
     elevation_deg: NDArray[np.float64]  # of m, -90 to 90 with both ends, increasing
     level_db: NDArray[np.float64]  # m by n, 0 at the highest point; a pole's row is constant
@@ -45,21 +47,20 @@ class GridPattern(Pattern):
         azimuth_offset_deg: ArrayLike,
         elevation_deg: ArrayLike,
         *,
-        electrical_downtilt_deg: float = 0.0,
+        electrical_downtilt_deg: float | None = None,
     ) -> NDArray[np.float64]:
         """Gain towards a direction: see :meth:`Pattern.gain`."""
-        azimuths, elevations = checked_angles(
-            azimuth_offset_deg, elevation_deg, electrical_downtilt_deg
-        )
-        if electrical_downtilt_deg != 0.0:
+        steering_deg = self.steering_deg(electrical_downtilt_deg)
+        azimuths, elevations = checked_angles(azimuth_offset_deg, elevation_deg)
+        if steering_deg != 0.0:
             edge_deg = SHIFTED_UP_TO_DEG
             elevations = np.interp(
                 elevations,
                 [-90.0, -edge_deg, edge_deg, 90.0],
                 [
                     -90.0,
-                    electrical_downtilt_deg - edge_deg,
-                    electrical_downtilt_deg + edge_deg,
+                    steering_deg - edge_deg,
+                    steering_deg + edge_deg,
                     90.0,
                 ],
             )

@@ -25,13 +25,19 @@ STEPS_DEG = (1.0, 0.5, 0.25, 0.125, 0.0625, 0.03125)  # powers of two: sums of t
 WANTED_ERROR_DB = 0.015  # of each axis, within DEPTH_DB of the peak
 DEEP_ERROR_DB = 0.5  # of each axis, further below the peak
 DEPTH_DB = 32.0
+ROUND_STEP_DEG, ROUND_OUT_TO_DEG = 0.25, 60.0  # of round patterns: their bends run along circles
+TALL_DEG = 40.0  # beams taller than this may have bends that wander far sideways as they rise
 BEND_REACH = 0.08  # of a beamwidth: bends may move so far between two sampled cuts
 SEAM_DEG = -90.0  # azimuth offset at which the table begins, and ends one turn later
+MOST_NODES = 64_000_000  # of a table with nodes halfway about corners: 4 bytes each
+_ROWS_AT_ONCE = 64
 BINS_PER_QUARTER = 8192  # of a turn in azimuth; and of the sine of the elevation from 0 to 1
 
 # Packed so that one load brings two neighbours: a load from a table is what a cell costs most.
 LEVEL_STEPS_PER_DB = 256  # 16 bits a level, so down to 256 dB below the peak
-PLACE_STEPS_PER_NODE = 512  # 23 bits a place, for up to 16,384 nodes, and 9 bits a step
+PLACE_STEPS_PER_NODE = 256  # 22 bits a place and 10 bits a bin's length
+MOST_IN_A_ROW = 16_000  # places of 22 bits hold 16,384
+LENGTH_BITS = 10  # so that a bin may span nearly 4 nodes: the steepest ones are that long
 
 # In float32, so that kernels stay in float32; a wider argument makes the result wider.
 _BINS = np.float32(BINS_PER_QUARTER)
@@ -39,8 +45,8 @@ _ZERO, _TWO = np.float32(0.0), np.float32(2.0)
 _TINY = np.float32(1e-30)
 _DB_PER_STEP = np.float32(1.0 / LEVEL_STEPS_PER_DB)
 _NODES_PER_STEP = np.float32(1.0 / PLACE_STEPS_PER_NODE)
-_PLACE_BITS, _LEVEL_BITS = np.uint32(9), np.uint32(16)
-_STEP_MASK, _LEVEL_MASK = np.uint32(0x1FF), np.uint32(0xFFFF)
+_PLACE_BITS, _LEVEL_BITS = np.uint32(LENGTH_BITS), np.uint32(16)
+_STEP_MASK, _LEVEL_MASK = np.uint32(2**LENGTH_BITS - 1), np.uint32(0xFFFF)
 _NOT_NEGATIVE = np.int32(0x7FFFFFFF)
 
 
@@ -159,7 +165,7 @@ def gain_table(
     *,
     azimuth_deg: float,
     mechanical_downtilt_deg: float = 0.0,
-    electrical_downtilt_deg: float = 0.0,
+    electrical_downtilt_deg: float | None = None,
 ) -> GainTable:
     """Table of the gain of a mounted pattern over true azimuth and elevation at the mast.
 
@@ -168,23 +174,33 @@ def gain_table(
     pattern : Pattern
     azimuth_deg : float
         Where the boresight points, clockwise from true north. [deg]
-    mechanical_downtilt_deg, electrical_downtilt_deg : float
+    mechanical_downtilt_deg : float
         Positive downwards, -45 to 45. [deg]
+    electrical_downtilt_deg : float or None
+        The same; None: what the pattern carries. [deg]
 
     Notes
     -----
     Within 30 dB of the peak the table is within 0.05 dB of the exact gain, save where a formula
     itself steps (ITU-R F.1336 does by 0.1 to 0.3 dB, at the join of main beam and side lobes):
-    there the step is drawn out over 1/32 degree. At the antenna's own zenith and nadir, where a
-    gain may depend on an azimuth that has no meaning there, nothing is promised within 1.5 degrees.
+    there the step is drawn out over 1/32 degree. So are the corners of dishes narrower than 3
+    degrees, and with an error of up to 0.25 dB, and those of cuts that are measured every tenth of
+    a degree and noisy: a table of all their corners would be too large. At the antenna's own zenith
+    and nadir, where a gain may depend on an azimuth that has no meaning there, nothing is promised
+    within 1.5 degrees.
     """
     checked_tilt(mechanical_downtilt_deg)
+    if electrical_downtilt_deg is None:
+        electrical_downtilt_deg = pattern.electrical_downtilt_deg
     azimuths, elevations = _nodes(pattern, electrical_downtilt_deg)
-    gain_dbi = pattern.gain(
-        azimuths[np.newaxis, :],
-        elevations[:, np.newaxis],
-        electrical_downtilt_deg=electrical_downtilt_deg,
-    )
+    gain_dbi = np.empty((elevations.size, azimuths.size), dtype=np.float32)
+    for first in range(0, elevations.size, _ROWS_AT_ONCE):  # a pattern needs much memory
+        rows = slice(first, first + _ROWS_AT_ONCE)
+        gain_dbi[rows] = pattern.gain(
+            azimuths[np.newaxis, :],
+            elevations[rows, np.newaxis],
+            electrical_downtilt_deg=electrical_downtilt_deg,
+        )
     sines = np.arange(-BINS_PER_QUARTER, BINS_PER_QUARTER + 1) / BINS_PER_QUARTER
     ahead = np.concatenate((1.0 - np.abs(sines), np.abs(sines[1:]) - 1.0))
     right = np.concatenate((sines, -sines[1:]))
@@ -205,11 +221,18 @@ def gain_table(
     )
 
 
-def _packed_levels(gain_dbi: NDArray[np.float64]) -> NDArray[np.uint32]:
+def _packed_levels(gain_dbi: NDArray[np.float32]) -> NDArray[np.uint32]:
     """Levels below the peak in whole steps, each with its neighbour to the right; ends repeated."""
-    steps = np.round((gain_dbi.max() - gain_dbi) * LEVEL_STEPS_PER_DB)
-    steps = np.pad(np.minimum(steps, 65535.0).astype(np.uint32), ((0, 1), (0, 2)), mode="edge")
-    return steps[:, :-1] << 16 | steps[:, 1:]
+    rows, cols = gain_dbi.shape
+    packed = np.empty((rows + 1, cols + 1), dtype=np.uint32)
+    peak_dbi = gain_dbi.max()
+    for first in range(0, rows, _ROWS_AT_ONCE):
+        band = gain_dbi[first : first + _ROWS_AT_ONCE]
+        steps = np.round((peak_dbi - band) * np.float32(LEVEL_STEPS_PER_DB))
+        steps = np.pad(np.minimum(steps, 65535.0).astype(np.uint32), ((0, 0), (0, 2)), mode="edge")
+        packed[first : first + band.shape[0]] = steps[:, :-1] << 16 | steps[:, 1:]
+    packed[rows] = packed[rows - 1]
+    return packed
 
 
 def _packed_places(
@@ -218,7 +241,8 @@ def _packed_places(
     """Where the bins that begin at given angles lie between the nodes, and how long they are."""
     places = np.interp(angles_deg, nodes_deg, np.arange(float(nodes_deg.size)))
     steps = np.round(places * PLACE_STEPS_PER_NODE).astype(np.uint32)
-    return steps << 9 | np.diff(steps, append=steps[-1])
+    lengths = np.minimum(np.diff(steps, append=steps[-1]), 2**LENGTH_BITS - 1)
+    return steps << LENGTH_BITS | lengths.astype(np.uint32)
 
 
 def _nodes(
@@ -232,24 +256,50 @@ def _nodes(
     bin_deg = 1.0 / BINS_PER_DEG
     elevations = np.arange(-90.0, 90.0 + bin_deg, bin_deg)
     width_deg = min(pattern.azimuth_beamwidth_deg, 120.0)
-    sides = width_deg * np.linspace(0.0, 1.5, 80)
+    height_deg = min(pattern.elevation_beamwidth_deg, 60.0)
+    sides, heights = _sampled_cuts_deg(width_deg, height_deg, pattern.is_round)
     upright = pattern.gain(
-        np.concatenate((sides, -sides[1::16], [180.0]))[:, np.newaxis],
+        sides[:, np.newaxis],
         elevations[np.newaxis, :],
         electrical_downtilt_deg=electrical_downtilt_deg,
     )
-    height_deg = min(pattern.elevation_beamwidth_deg, 60.0)
     beam_deg = elevations[int(np.argmax(upright.max(axis=0)))]
-    heights = height_deg * np.linspace(0.0, 1.5, 32)
     azimuths = SEAM_DEG + np.arange(0.0, 360.0, bin_deg)
     level = pattern.gain(
         azimuths[np.newaxis, :],
-        np.clip(beam_deg + np.concatenate((heights, -heights[1::4])), -90.0, 90.0)[:, np.newaxis],
+        np.clip(beam_deg + heights, -90.0, 90.0)[:, np.newaxis],
         electrical_downtilt_deg=electrical_downtilt_deg,
     )
-    around = _placed(SEAM_DEG, _allowed_step_deg(level, BEND_REACH * width_deg, around=True))
-    upwards = _placed(-90.0, _allowed_step_deg(upright, BEND_REACH * height_deg, around=False))
-    return _with_corners(around, level), _with_corners(upwards, upright)
+    across = _allowed_step_deg(level, BEND_REACH * width_deg, around=True)
+    along = _allowed_step_deg(upright, BEND_REACH * height_deg, around=False)
+    if pattern.is_round:
+        for start_deg, steps_deg in ((SEAM_DEG, across), (-90.0, along)):
+            inside = np.abs(start_deg + np.arange(steps_deg.size) * bin_deg) < ROUND_OUT_TO_DEG
+            steps_deg[inside] = np.minimum(steps_deg[inside], ROUND_STEP_DEG)
+    around, upwards = _placed(SEAM_DEG, across), _placed(-90.0, along)
+    finer_around, finer_upwards = _with_corners(around, level), _with_corners(upwards, upright)
+    if finer_around.size * finer_upwards.size > MOST_NODES or finer_around.size > MOST_IN_A_ROW:
+        return around, upwards  # measured finely and noisy: a corner at each bin
+    return finer_around, finer_upwards
+
+
+def _sampled_cuts_deg(
+    width_deg: float, height_deg: float, is_round: bool
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Azimuths of upright cuts, and of level ones the elevations from the beam.
+
+    Dense in the beam on one side, since most formulas are alike on both, and sparse elsewhere.
+    """
+    side_count, height_count = 80, 96 if height_deg > TALL_DEG else 32
+    if is_round:  # a cut for each bin
+        side_count = max(side_count, math.ceil(1.5 * width_deg * BINS_PER_DEG))
+        height_count = max(height_count, math.ceil(1.5 * height_deg * BINS_PER_DEG))
+    sides = width_deg * np.linspace(0.0, 1.5, side_count)
+    heights = height_deg * np.linspace(0.0, 1.5, height_count)
+    return (
+        np.concatenate((sides, -sides[1::16], np.linspace(sides[-1], 180.0, 13))),
+        np.concatenate((heights, -heights[1::4])),
+    )
 
 
 def _with_corners(

@@ -103,7 +103,7 @@ def mounted_gain_dbi(
     elevation_deg: ArrayLike,
     azimuth_deg: float,
     mechanical_downtilt_deg: float,
-    electrical_downtilt_deg: float,
+    electrical_downtilt_deg: float | None,
 ) -> NDArray[np.float64]:
     """Gain of a mounted and aimed antenna towards a true direction at the mast. [dBi]
 
@@ -116,8 +116,10 @@ def mounted_gain_dbi(
         Direction above the horizontal, -90 to 90. [deg]
     azimuth_deg : float
         Where the boresight points, clockwise from true north. [deg]
-    mechanical_downtilt_deg, electrical_downtilt_deg : float
+    mechanical_downtilt_deg : float
         Positive downwards, -45 to 45. [deg]
+    electrical_downtilt_deg : float or None
+        The same; None: what the pattern carries. [deg]
 
     Returns
     -------

@@ -8,8 +8,8 @@ mechanically. ``mounting`` turns true directions into these.
 import math
 from abc import ABC, abstractmethod
 from collections.abc import Iterable
-from dataclasses import dataclass
-from typing import Any, Literal
+from dataclasses import dataclass, field
+from typing import Any, ClassVar, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -20,10 +20,9 @@ LOWEST_GAIN_DBI = -20.0  # common practice, no source: no sector antenna lies ou
 HIGHEST_GAIN_DBI = 60.0
 HIGHEST_TILT_DEG = 45.0  # common practice, no source: either way, mechanical or electrical
 
-# What the levels of a pattern are. "measured": of one antenna, in this direction. "model": a
-# formula that stands for what an antenna radiates in this direction. "envelope": what side lobes
-# stay below or have in the mean, so that their sum is not the power that is radiated.
-PatternKind = Literal["measured", "model", "envelope"]
+# What a pattern's levels mean. An envelope is a line that side lobes stay below or swing about, so
+# that it holds more power than any antenna radiates: it must not be integrated over the sphere.
+PatternKind = Literal["envelope", "model", "measured"]
 
 # Directivity of a beam that fills its half-power rectangle evenly, in square degrees:
 # (180/pi)^2 * 4 pi. Kraus, Antennas (1950), chapter 2; from memory.
@@ -36,15 +35,20 @@ class Pattern(ABC):
 
     ``azimuth_beamwidth_deg`` and ``elevation_beamwidth_deg`` are the full widths between the
     directions 3 dB below the peak, without electrical tilt; ``gain_dbi`` is the peak.
+    ``electrical_downtilt_deg`` is what the pattern carries already, as a file measured at a tilt
+    does; the tilt asked of :meth:`gain` is the whole tilt, and only the difference is steered.
     """
+
+    tilts_electrically: ClassVar[bool] = True  # False: asking for an electrical tilt is an error
+    is_round: ClassVar[bool] = False  # the gain depends on the angle off the boresight alone
 
     name: str  # as in the plan
     gain_dbi: float  # at the peak, over isotropic
     azimuth_beamwidth_deg: float  # between the 3 dB points, in the cut through the peak
     elevation_beamwidth_deg: float
     notes: tuple[str, ...] = ()  # what was assumed, for the reader of a report
-    kind: PatternKind = "model"  # whether gain and directivity can be held against each other
-    carried_downtilt_deg: float = 0.0  # electrical, in the levels; a further one comes on top
+    kind: PatternKind = field(init=False, default="model")
+    electrical_downtilt_deg: float = field(init=False, default=0.0)  # carried; positive downwards
 
     @abstractmethod
     def gain(
@@ -52,7 +56,7 @@ class Pattern(ABC):
         azimuth_offset_deg: ArrayLike,
         elevation_deg: ArrayLike,
         *,
-        electrical_downtilt_deg: float = 0.0,
+        electrical_downtilt_deg: float | None = None,
     ) -> NDArray[np.float64]:
         """Gain towards a direction in the antenna's own frame. [dBi]
 
@@ -62,14 +66,42 @@ class Pattern(ABC):
             Clockwise from the boresight seen from above; any real number. [deg]
         elevation_deg : float or array, broadcast
             Positive upwards, -90 to 90. [deg]
-        electrical_downtilt_deg : float
-            Positive downwards, -45 to 45. [deg]
+        electrical_downtilt_deg : float or None
+            The whole electrical tilt, positive downwards, -45 to 45; None: the pattern as it is.
+            [deg]
 
         Returns
         -------
         array, broadcast shape. NaN where an angle is NaN or infinite, or the elevation lies
         outside -90 to 90.
+
+        Raises
+        ------
+        PatternError
+            Where the tilt is none, or the antenna has no electrical tilt.
         """
+
+    def steering_deg(self, electrical_downtilt_deg: float | None) -> float:
+        """How much further down than it is the pattern has to be steered; checked. [deg]"""
+        if electrical_downtilt_deg is None:
+            return 0.0
+        steering_deg = electrical_downtilt_deg - self.electrical_downtilt_deg
+        allowed = ""
+        if not -HIGHEST_TILT_DEG <= electrical_downtilt_deg <= HIGHEST_TILT_DEG:
+            allowed = f"{-HIGHEST_TILT_DEG:g} to {HIGHEST_TILT_DEG:g} deg, positive downwards"
+        elif electrical_downtilt_deg != 0.0 and not self.tilts_electrically:
+            allowed = f"0 deg: antenna {self.name} has no electrical tilt"
+        elif abs(steering_deg) > HIGHEST_TILT_DEG:
+            allowed = (
+                f"at most {HIGHEST_TILT_DEG:g} deg from the {self.electrical_downtilt_deg:g} deg "
+                f"that antenna {self.name} carries already"
+            )
+        if allowed:
+            found = f"{electrical_downtilt_deg:g}"
+            raise PatternError(
+                Problem(where="electrical_downtilt_deg", found=found, allowed=allowed)
+            )
+        return steering_deg
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -87,27 +119,19 @@ class Isotropic(Pattern):
         azimuth_offset_deg: ArrayLike,
         elevation_deg: ArrayLike,
         *,
-        electrical_downtilt_deg: float = 0.0,
+        electrical_downtilt_deg: float | None = None,
     ) -> NDArray[np.float64]:
         """Gain towards any direction: see :meth:`Pattern.gain`."""
-        azimuth_deg, elevation = checked_angles(
-            azimuth_offset_deg, elevation_deg, electrical_downtilt_deg
-        )
+        self.steering_deg(electrical_downtilt_deg)
+        azimuth_deg, elevation = checked_angles(azimuth_offset_deg, elevation_deg)
         zero = 0.0 * (azimuth_deg + elevation)
         return np.asarray(self.gain_dbi + zero)
 
 
 def checked_angles(
-    azimuth_offset_deg: ArrayLike, elevation_deg: ArrayLike, electrical_downtilt_deg: float
+    azimuth_offset_deg: ArrayLike, elevation_deg: ArrayLike
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
-    """Offset reduced to -180 <= a < 180 and elevation; NaN where a direction is none.
-
-    Raises ``PatternError`` where the electrical downtilt is none.
-    """
-    if not -HIGHEST_TILT_DEG <= electrical_downtilt_deg <= HIGHEST_TILT_DEG:
-        found = f"{electrical_downtilt_deg:g}"
-        allowed = f"{-HIGHEST_TILT_DEG:g} to {HIGHEST_TILT_DEG:g} deg, positive downwards"
-        raise PatternError(Problem(where="electrical_downtilt_deg", found=found, allowed=allowed))
+    """Offset reduced to -180 <= a < 180 and elevation; NaN where a direction is none."""
     azimuth_deg = np.asarray(azimuth_offset_deg, dtype=float)
     elevation = np.asarray(elevation_deg, dtype=float)
     azimuth_deg = np.where(np.isfinite(azimuth_deg), azimuth_deg, np.nan)

@@ -38,7 +38,7 @@ def tr36814_relative_gain_db_scalar(
     return -loss_db
 
 
-_relative_gain_db = over_arrays(tr36814_relative_gain_db_scalar)
+relative_gain_db = over_arrays(tr36814_relative_gain_db_scalar)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -85,16 +85,15 @@ class Tr36814Sector(Pattern):
         azimuth_offset_deg: ArrayLike,
         elevation_deg: ArrayLike,
         *,
-        electrical_downtilt_deg: float = 0.0,
+        electrical_downtilt_deg: float | None = None,
     ) -> NDArray[np.float64]:
         """Gain towards a direction: see :meth:`Pattern.gain`."""
-        azimuth_deg, elevation = checked_angles(
-            azimuth_offset_deg, elevation_deg, electrical_downtilt_deg
-        )
+        steering_deg = self.steering_deg(electrical_downtilt_deg)
+        azimuth_deg, elevation = checked_angles(azimuth_offset_deg, elevation_deg)
         with np.errstate(invalid="ignore"):  # comparing NaN in a compiled loop may raise the flag
-            relative_db = _relative_gain_db(
+            relative_db = relative_gain_db(
                 azimuth_deg,
-                elevation + electrical_downtilt_deg,
+                elevation + steering_deg,
                 self.azimuth_beamwidth_deg,
                 self.elevation_beamwidth_deg,
                 self.front_to_back_db,

@@ -1,18 +1,29 @@
-"""A pattern put together from a measured horizontal and a vertical cut."""
+"""A pattern put together from a horizontal and a vertical cut."""
 
+import math
 from dataclasses import dataclass
+from typing import get_args
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
-from planner.antenna.beamwidth import half_power_beamwidth_deg
+from planner.antenna.beamwidth import half_power_beamwidth_deg, middle_of_peak_deg
+from planner.antenna.interpolation import (
+    INTERPOLATIONS,
+    Interpolation,
+    cross_weighted_db,
+    projected_db,
+    summed_db,
+)
 from planner.antenna.pattern import (
+    HIGHEST_TILT_DEG,
     Pattern,
     PatternKind,
     checked_angles,
     gain_notes,
     gain_problems,
     raise_problems,
+    range_problems,
     with_notes,
 )
 from planner.errors import Problem
@@ -21,27 +32,35 @@ WIDEST_GAP_DEG = 30.0  # between neighbouring points of a cut; more would be gue
 LOWEST_LEVEL_DB = -200.0
 PEAK_TOLERANCE_DB = 0.5  # a sampled cut may miss its own peak by this much
 SAME_LEVEL_DB = 0.01  # one direction given twice, as 0 and 360
+REAR_NOTE = (
+    "The vertical cut has no half behind the antenna: it was made up from the front half and the "
+    "horizontal cut."
+)
+_FADES_FROM_POLE_DEG = 45.0  # as far as a tilt may go: so the order of elevations is kept
+_LEAST_COSINE = 0.1  # of the elevation of the peak: above 84 degrees there is no horizontal cut
 
 Cut = tuple[NDArray[np.float64], NDArray[np.float64]]  # angle and level, angles increasing
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class TwoCutPattern(Pattern):
-    """Gain as peak gain plus the levels of both cuts, in dB; made by :func:`two_cut_pattern`.
+    """Gain as peak gain plus a level put together from both cuts; see :func:`two_cut_pattern`.
 
-    Between the points of a cut the level in dB is interpolated linearly, in the horizontal cut all
-    around the circle. The plain sum of the two levels is exact in both cuts and a convention off
-    them: there it tends to tell too little gain behind and beside the antenna.
+    Between the points of a cut the level in dB is interpolated linearly around the circle, without
+    a seam. Off the cuts ``interpolation`` says how they are put together, see
+    :mod:`planner.antenna.interpolation`.
 
-    Electrical downtilt shifts the vertical cut downwards at all azimuths. Where that asks for
-    directions beyond the zenith, the cut's own points there are used if the file has them, else
-    the level at its end.
+    Electrical downtilt steers the vertical cut: up to 45 degrees from the horizon it is shifted
+    downwards by the tilt, at all azimuths; from there the shift fades, so that straight up and down
+    stay where they are. A tilt that the cuts carry already is not applied again.
     """
 
     kind: PatternKind = "measured"
+    electrical_downtilt_deg: float = 0.0
+    interpolation: Interpolation = "projected"
     horizontal_angle_deg: NDArray[np.float64]  # -180 to 180, both ends present
     horizontal_level_db: NDArray[np.float64]  # 0 at the highest point
-    vertical_angle_deg: NDArray[np.float64]  # positive upwards, at least -90 to 90
+    vertical_angle_deg: NDArray[np.float64]  # the same; positive upwards, beyond 90 behind
     vertical_level_db: NDArray[np.float64]
 
     def gain(
@@ -49,17 +68,45 @@ class TwoCutPattern(Pattern):
         azimuth_offset_deg: ArrayLike,
         elevation_deg: ArrayLike,
         *,
-        electrical_downtilt_deg: float = 0.0,
+        electrical_downtilt_deg: float | None = None,
     ) -> NDArray[np.float64]:
         """Gain towards a direction: see :meth:`Pattern.gain`."""
-        azimuth_deg, elevation = checked_angles(
-            azimuth_offset_deg, elevation_deg, electrical_downtilt_deg
+        steering_deg = self.steering_deg(electrical_downtilt_deg)
+        azimuth_deg, elevation = checked_angles(azimuth_offset_deg, elevation_deg)
+        elevation = _steered_deg(elevation, steering_deg)
+        horizontal_db = self._horizontal_db(azimuth_deg)
+        vertical_db = self._vertical_db(elevation)
+        if self.interpolation == "sum":
+            return np.asarray(self.gain_dbi + summed_db(horizontal_db, vertical_db))
+        if self.interpolation == "cross-weighted":
+            return np.asarray(self.gain_dbi + cross_weighted_db(horizontal_db, vertical_db))
+        peak_azimuth_deg, peak_elevation_deg = self._peak_deg()
+        shares = np.cos(np.radians(elevation)) / max(
+            math.cos(math.radians(peak_elevation_deg)), _LEAST_COSINE
         )
-        horizontal_db = np.interp(azimuth_deg, self.horizontal_angle_deg, self.horizontal_level_db)
-        vertical_db = np.interp(
-            elevation + electrical_downtilt_deg, self.vertical_angle_deg, self.vertical_level_db
+        level_db = projected_db(
+            horizontal_db,
+            vertical_db,
+            self._vertical_db(_behind_deg(elevation)),
+            rear_share=0.5 - 0.5 * np.cos(np.radians(azimuth_deg - peak_azimuth_deg)),
+            horizon_share=np.minimum(shares, 1.0),
+            rear_db=float(self._vertical_db(_behind_deg(np.asarray(peak_elevation_deg)))),
         )
-        return np.asarray(self.gain_dbi + horizontal_db + vertical_db)
+        return np.asarray(self.gain_dbi + level_db)
+
+    def _horizontal_db(self, azimuth_deg: NDArray[np.float64]) -> NDArray[np.float64]:
+        return np.interp(azimuth_deg, self.horizontal_angle_deg, self.horizontal_level_db)
+
+    def _vertical_db(self, angle_deg: NDArray[np.float64]) -> NDArray[np.float64]:
+        return np.interp(angle_deg, self.vertical_angle_deg, self.vertical_level_db)
+
+    def _peak_deg(self) -> tuple[float, float]:
+        """Azimuth of the horizontal cut's peak, elevation of the vertical cut's in front."""
+        front = np.abs(self.vertical_angle_deg) <= 90.0
+        return (
+            middle_of_peak_deg(self.horizontal_angle_deg, self.horizontal_level_db),
+            middle_of_peak_deg(self.vertical_angle_deg[front], self.vertical_level_db[front]),
+        )
 
 
 def two_cut_pattern(
@@ -70,6 +117,9 @@ def two_cut_pattern(
     horizontal_level_db: ArrayLike,
     vertical_angle_deg: ArrayLike,
     vertical_level_db: ArrayLike,
+    interpolation: Interpolation = "projected",
+    kind: PatternKind = "measured",
+    electrical_downtilt_deg: float = 0.0,
     notes: tuple[str, ...] = (),
 ) -> TwoCutPattern:
     """Pattern from the points of two cuts.
@@ -82,9 +132,17 @@ def two_cut_pattern(
         Gain where both levels are 0. [dBi]
     horizontal_angle_deg, vertical_angle_deg : array of n
         -180 to 180 or 0 to 360, in any order. Horizontal: clockwise from the boresight seen from
-        above, all around. Vertical: elevation, positive upwards, at least -90 to 90. [deg]
+        above, all around, at the elevation of the peak. Vertical: elevation, positive upwards, at
+        least -90 to 90, at the azimuth of the peak; beyond 90 it goes down behind the antenna.
+        [deg]
     horizontal_level_db, vertical_level_db : array of n
         Relative to the cut's own peak, 0 or negative. [dB]
+    interpolation : "projected", "cross-weighted" or "sum"
+        How the cuts are put together off them: see :mod:`planner.antenna.interpolation`.
+    kind : "measured", "model" or "envelope"
+        What the levels are.
+    electrical_downtilt_deg : float
+        Tilt that the cuts already carry, positive downwards, -45 to 45. [deg]
 
     Raises
     ------
@@ -94,32 +152,90 @@ def two_cut_pattern(
 
     Notes
     -----
-    A cut whose highest point lies within 0.5 dB below 0 is raised to 0, and a note says so.
+    A cut whose highest point lies within 0.5 dB below 0 is raised to 0, and a note says so. So
+    does a note where the vertical cut has no half behind the antenna: then that half is taken to be
+    the front's, shrunk so as to begin at the level straight up or down and to end at that of the
+    horizontal cut behind; straight lines, where the antenna is stronger straight up than behind.
     """
     problems = gain_problems(name, gain_dbi)
+    problems += range_problems(
+        name, "electrical_downtilt_deg", electrical_downtilt_deg, -HIGHEST_TILT_DEG,
+        HIGHEST_TILT_DEG, unit="deg, positive downwards",
+    )  # fmt: skip
+    for key, value, allowed in (
+        ("interpolation", interpolation, INTERPOLATIONS),
+        ("kind", kind, get_args(PatternKind)),
+    ):
+        if value not in allowed:
+            words = ", ".join(f'"{word}"' for word in allowed)
+            where = f"antenna.{name}.{key}"
+            problems.append(Problem(where=where, found=repr(value), allowed=words))
     said = list(notes)
     horizontal = _cut(name, "horizontal", horizontal_angle_deg, horizontal_level_db, problems, said)
     vertical = _cut(name, "vertical", vertical_angle_deg, vertical_level_db, problems, said)
     raise_problems(problems)
+    around = bool(vertical[0][-1] - vertical[0][0] == 360.0)
+    beams = (
+        half_power_beamwidth_deg(*horizontal, around=True),
+        half_power_beamwidth_deg(*vertical, around=around),
+    )
+    if not around:
+        peak_deg = middle_of_peak_deg(*horizontal)
+        opposite_deg = peak_deg - 180.0 if peak_deg > 0.0 else peak_deg + 180.0
+        vertical = _with_rear_half(vertical, float(np.interp(opposite_deg, *horizontal)))
+        said.append(REAR_NOTE)
     arrays = (*horizontal, *vertical)
     for array in arrays:
         array.setflags(write=False)
-    vertical_goes_around = bool(vertical[0][-1] - vertical[0][0] == 360.0)
-    beams = (
-        half_power_beamwidth_deg(*horizontal, around=True),
-        half_power_beamwidth_deg(*vertical, around=vertical_goes_around),
-    )
     return TwoCutPattern(
         name=name,
         gain_dbi=gain_dbi,
         azimuth_beamwidth_deg=beams[0],
         elevation_beamwidth_deg=beams[1],
         notes=with_notes(tuple(said), gain_notes(gain_dbi, *beams)),
+        kind=kind,
+        electrical_downtilt_deg=electrical_downtilt_deg,
+        interpolation=interpolation,
         horizontal_angle_deg=arrays[0],
         horizontal_level_db=arrays[1],
         vertical_angle_deg=arrays[2],
         vertical_level_db=arrays[3],
     )
+
+
+def _steered_deg(elevation_deg: NDArray[np.float64], steering_deg: float) -> NDArray[np.float64]:
+    """Elevation in the vertical cut, of an elevation when the beam is steered down; order kept."""
+    to_pole = np.minimum(1.0, (90.0 - np.abs(elevation_deg)) / _FADES_FROM_POLE_DEG)
+    return elevation_deg + steering_deg * to_pole
+
+
+def _behind_deg(elevation_deg: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Angle in the vertical cut of an elevation behind the antenna, -180 to 180."""
+    return np.copysign(180.0, elevation_deg) - elevation_deg
+
+
+def _with_rear_half(front: Cut, rear_db: float) -> Cut:
+    """A vertical cut from -180 to 180, made up behind the antenna, where it ends at ``rear_db``.
+
+    An antenna as strong behind as in front gets the same half once more.
+    """
+    angles, levels = front
+    poles_db = np.interp([-90.0, 90.0], angles, levels)
+    made = [front]
+    for sign, pole_db in zip((-1.0, 1.0), poles_db, strict=True):
+        elevations = np.unique(np.clip(np.append(sign * angles, 0.0), 0.0, 90.0))
+        elevations = elevations[180.0 - elevations > (sign * angles).max()]
+        height = elevations / 90.0
+        if (poles_db < min(rear_db, -SAME_LEVEL_DB)).all():
+            deepest_db = poles_db.mean() + (pole_db - poles_db.mean()) * height
+            depth = np.interp(sign * elevations, angles, levels) / deepest_db
+            behind_db = rear_db + (deepest_db - rear_db) * depth
+        else:
+            behind_db = rear_db + (pole_db - rear_db) * height
+        made.append((sign * (180.0 - elevations), behind_db))
+    angles, levels = (np.concatenate(parts) for parts in zip(*made, strict=True))
+    order = np.argsort(angles)
+    return angles[order], np.maximum(levels[order], LOWEST_LEVEL_DB)
 
 
 def _cut(

@@ -9,7 +9,7 @@ from typing import Annotated, Any
 from pydantic import Field, TypeAdapter, ValidationError
 from pydantic.fields import FieldInfo
 
-from planner.antenna import FORMULAS, Pattern, formula_pattern, with_total_tilt
+from planner.antenna import FORMULAS, Pattern, formula_pattern
 from planner.errors import InputError, PatternError, Problem
 from planner.io.pattern_files import read_pattern
 from planner.network import Sector
@@ -168,20 +168,15 @@ def _from_settings(source: str, settings: Mapping[str, Any]) -> StudiedAntenna:
         pattern = _formula_pattern(formula, settings["frequency_mhz"], own)
     else:
         name = Path(source).name
-        pattern = with_total_tilt(
-            read_pattern(
-                Path(source),
-                name=name,
-                gain_dbi=own.get("gain_dbi"),
-                frequency_mhz=frequency_mhz,
-            )
+        pattern = read_pattern(
+            Path(source), name=name, gain_dbi=own.get("gain_dbi"), frequency_mhz=frequency_mhz
         )
     antenna = MountedAntenna(
         label=name,
         pattern=pattern,
         azimuth_deg=None,
         electrical_downtilt_deg=settings.get(
-            "electrical_downtilt_deg", pattern.carried_downtilt_deg
+            "electrical_downtilt_deg", pattern.electrical_downtilt_deg
         ),
         frequency_mhz=frequency_mhz,
         transmit_power_dbm=settings.get("transmit_power_dbm"),

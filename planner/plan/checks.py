@@ -117,13 +117,20 @@ def _check_antennas(findings: Findings, rest: Rest) -> None:
                 findings.add((*place, "gain_dbi"), found="nothing", allowed=allowed)
         elif sources == ["file"]:
             for key in antenna:
-                own = ("file", "gain_dbi", *NOT_OF_THE_PATTERN)
+                own = ("file", "gain_dbi", "interpolation", *NOT_OF_THE_PATTERN)
                 if key not in own and antenna[key] is not None:
                     findings.add(
                         (*place, key),
                         found=shown(antenna[key]),
                         allowed=f"no {key} beside a pattern file, which says it itself",
                     )
+        elif antenna.get("interpolation") is not None:
+            findings.add(
+                (*place, "interpolation"),
+                found=shown(antenna["interpolation"]),
+                allowed="nothing: a formula holds in every direction",
+                advice="Leave the key out",
+            )
 
 
 def _check_thresholds(findings: Findings, rest: Rest) -> None:

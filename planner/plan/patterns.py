@@ -1,20 +1,20 @@
 """The antenna patterns of a plan: one for each antenna and radio that go together."""
 
-from collections.abc import Mapping
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
-from planner.antenna import Pattern, formula_pattern, with_total_tilt
+from planner.antenna import Pattern, TwoCutPattern, formula_pattern
 from planner.errors import PatternError, Problem
 from planner.io.pattern_files import PatternFile, pattern_of, read_pattern_file
 from planner.plan.checks import NOT_OF_THE_PATTERN, Rest, trouble_with_file
 from planner.plan.findings import Findings
-from planner.plan.schema import PlanTable, SectorTable
 from planner.plan.shown import shown
 from planner.plan.toml_file import Location
 
 # An antenna that no sector uses is checked all the same, at a frequency where every formula holds.
 _ANY_FREQUENCY_MHZ = 5000.0
+_COUNTS = ("rows", "columns")  # stay whole numbers
 
 
 def built_patterns(findings: Findings, rest: Rest) -> dict[tuple[str, str], Pattern]:
@@ -41,23 +41,25 @@ def built_patterns(findings: Findings, rest: Rest) -> dict[tuple[str, str], Patt
     for antenna in antennas:
         if antenna not in used:
             builder.pattern(antenna, antennas[antenna], "", None)
+    _check_tilts(findings, rest, patterns)
     return patterns
 
 
-def with_own_tilts(tables: PlanTable, patterns: Mapping[tuple[str, str], Pattern]) -> PlanTable:
-    """The tables with an electrical tilt in every sector: its pattern's own if none is given."""
-
-    def tilted(sector: SectorTable) -> SectorTable:
-        if sector.electrical_downtilt_deg is not None:
-            return sector
-        own_deg = patterns[sector.antenna, sector.radio].carried_downtilt_deg
-        return sector.model_copy(update={"electrical_downtilt_deg": own_deg})
-
-    towers = [
-        tower.model_copy(update={"sector": [tilted(sector) for sector in tower.sector]})
-        for tower in tables.tower
-    ]
-    return tables.model_copy(update={"tower": towers})
+def _check_tilts(findings: Findings, rest: Rest, patterns: dict[tuple[str, str], Pattern]) -> None:
+    """Electrical tilts that an antenna cannot have."""
+    for number, tower in enumerate(rest.get("tower") or []):
+        for place, sector in enumerate((tower or {}).get("sector") or []):
+            keys: Rest = sector or {}
+            antenna_and_radio: Any = keys.get("antenna"), keys.get("radio")
+            tilt_deg = keys.get("electrical_downtilt_deg")
+            if antenna_and_radio not in patterns or tilt_deg is None:
+                continue
+            try:
+                patterns[antenna_and_radio].steering_deg(tilt_deg)
+            except PatternError as error:
+                location = ("tower", number, "sector", place, "electrical_downtilt_deg")
+                for problem in error.problems:
+                    findings.add(location, found=problem.found, allowed=problem.allowed)
 
 
 def _pairs(rest: Rest, antennas: Rest, radios: Rest) -> list[tuple[Any, Any]]:
@@ -98,9 +100,9 @@ class _Builder:
 
     def _of_formula(self, antenna: str, keys: Rest, frequency_mhz: float | None) -> Pattern:
         others: dict[str, Any] = {
-            key: float(value) if isinstance(value, int) else value
+            key: float(value) if isinstance(value, int) and key not in _COUNTS else value
             for key, value in keys.items()
-            if key not in ("formula", "gain_dbi", *NOT_OF_THE_PATTERN)
+            if key not in ("formula", "gain_dbi", "interpolation", *NOT_OF_THE_PATTERN)
         }
         return formula_pattern(
             antenna,
@@ -117,15 +119,23 @@ class _Builder:
         if path not in self._files:
             self._files[path] = read_pattern_file(path)
         gain_dbi = keys.get("gain_dbi")
-        return with_total_tilt(
-            pattern_of(
-                self._files[path],
-                name=antenna,
-                gain_dbi=None if gain_dbi is None else float(gain_dbi),
-                frequency_mhz=frequency_mhz,
-                polarization=self._polarization,
-            )
+        pattern = pattern_of(
+            self._files[path],
+            name=antenna,
+            gain_dbi=None if gain_dbi is None else float(gain_dbi),
+            frequency_mhz=frequency_mhz,
+            polarization=self._polarization,
         )
+        if "interpolation" not in keys:
+            return pattern
+        if not isinstance(pattern, TwoCutPattern):
+            self._findings.add(
+                ("antenna", antenna, "interpolation"),
+                found=shown(keys["interpolation"]),
+                allowed="nothing: the file holds levels all over the sphere",
+            )
+            return None
+        return replace(pattern, interpolation=keys["interpolation"])
 
 
 def _add_pattern_problem(findings: Findings, antenna: str, radio: str, problem: Problem) -> None:

@@ -15,7 +15,7 @@ from planner.physics.diffraction import Polarization
 from planner.physics.link import eirp_dbm
 from planner.plan.checks import add_problems_between_keys
 from planner.plan.findings import Findings, add_schema_problems, without
-from planner.plan.patterns import built_patterns, with_own_tilts
+from planner.plan.patterns import built_patterns
 from planner.plan.places import latitude_longitude
 from planner.plan.schema import AntennaTable, PlanTable, SectorTable, TowerTable
 from planner.plan.toml_file import TomlFile, read_toml_file
@@ -87,7 +87,7 @@ def read_plan(path: Path) -> Plan:
     patterns = built_patterns(findings, rest)
     if findings or tables is None:
         raise findings.error()
-    return _plan(file, with_own_tilts(tables, patterns), patterns)
+    return _plan(file, tables, patterns)
 
 
 def eirp_excesses(plan: Plan) -> tuple[EirpExcess, ...]:
@@ -115,7 +115,7 @@ def _plan(file: TomlFile, tables: PlanTable, patterns: Mapping[tuple[str, str], 
     """The plan of tables in which nothing is wrong; patterns by (antenna, radio)."""
     folder = file.path.parent
     radios = _radios(tables)
-    towers = tuple(_tower(tower, radios, tables.antenna) for tower in tables.tower)
+    towers = tuple(_tower(tower, radios, tables.antenna, patterns) for tower in tables.tower)
     terminal, model = tables.terminal, tables.model
     used = [sector for tower in tables.tower for sector in tower.sector if sector.on]
     used_antennas = dict.fromkeys(sector.antenna for sector in used)
@@ -186,7 +186,10 @@ def _radios(tables: PlanTable) -> dict[str, Radio]:
 
 
 def _tower(
-    tower: TowerTable, radios: Mapping[str, Radio], antennas: Mapping[str, AntennaTable]
+    tower: TowerTable,
+    radios: Mapping[str, Radio],
+    antennas: Mapping[str, AntennaTable],
+    patterns: Mapping[tuple[str, str], Pattern],
 ) -> Tower:
     place: tuple[float, float] | None
     if tower.latitude is not None and tower.longitude is not None:
@@ -198,13 +201,21 @@ def _tower(
     if place is None:
         raise AssertionError(f"tower {tower.id} has passed the checks without a place")
     latitude, longitude = place
-    sectors = tuple(_sector(sector, radios, antennas) for sector in tower.sector if sector.on)
+    sectors = tuple(
+        _sector(sector, radios, antennas, patterns[sector.antenna, sector.radio])
+        for sector in tower.sector
+        if sector.on
+    )
     return Tower(id=tower.id, latitude=latitude, longitude=longitude, sectors=sectors)
 
 
 def _sector(
-    sector: SectorTable, radios: Mapping[str, Radio], antennas: Mapping[str, AntennaTable]
+    sector: SectorTable,
+    radios: Mapping[str, Radio],
+    antennas: Mapping[str, AntennaTable],
+    pattern: Pattern,
 ) -> Sector:
+    tilt_deg = sector.electrical_downtilt_deg
     return Sector(
         id=sector.id,
         antenna=sector.antenna,
@@ -212,6 +223,6 @@ def _sector(
         antenna_height_m=sector.antenna_height_m,
         azimuth_deg=sector.azimuth_deg + 0.0,  # -0.0 becomes 0.0
         mechanical_downtilt_deg=sector.mechanical_downtilt_deg,
-        electrical_downtilt_deg=sector.electrical_downtilt_deg or 0.0,
+        electrical_downtilt_deg=pattern.electrical_downtilt_deg if tilt_deg is None else tilt_deg,
         largest_dimension_m=antennas[sector.antenna].largest_dimension_m,
     )

@@ -13,9 +13,23 @@ from typing import Annotated, Any, Literal, get_args, get_origin
 from pydantic import BaseModel, ConfigDict, Field
 from pydantic.fields import FieldInfo
 
+from planner.antenna import FORMULAS
+from planner.antenna.dish import LARGEST_DIAMETER_M
+from planner.antenna.interpolation import INTERPOLATIONS, Interpolation
+from planner.antenna.m2101 import MOST_ELEMENTS, SPACINGS_WAVELENGTHS, WIDEST_STEERING_DEG
 from planner.antenna.pattern import HIGHEST_GAIN_DBI, HIGHEST_TILT_DEG, LOWEST_GAIN_DBI
 from planner.units import STANDARD_K_FACTOR
 
+FormulaName = Literal[
+    "F.1336-5",
+    "F.1336-5 omnidirectional",
+    "F.699",
+    "F.1245",
+    "TR 36.814",
+    "TR 38.901",
+    "M.2101",
+    "isotropic",
+]
 LayerName = Literal[
     "received_signal",
     "best_server",
@@ -54,6 +68,12 @@ def _number(
         allow_inf_nan=False,
         description=f"{lowest:.10g} {between} {highest:.10g} {unit}".strip(),
     )
+
+
+def _listed(words: Sequence[str]) -> str:
+    """ "a", "b" or "c"."""
+    quoted = [f'"{word}"' for word in words]
+    return " or ".join((", ".join(quoted[:-1]), quoted[-1]))
 
 
 def _whole_number(lowest: int, highest: int, *, default: int | None = _REQUIRED) -> Any:
@@ -129,10 +149,9 @@ class ModelTable(Table):
 class AntennaTable(Table):
     """[antenna.NAME]"""
 
-    formula: Literal["F.1336-5", "TR 36.814", "isotropic"] | None = _words(
-        '"F.1336-5", "TR 36.814" or "isotropic"', default=None
-    )
+    formula: FormulaName | None = _words(_listed(FORMULAS), default=None)
     file: str | None = _file(default=None)
+    interpolation: Interpolation | None = _words(_listed(INTERPOLATIONS), default=None)
     gain_dbi: float | None = _number(LOWEST_GAIN_DBI, HIGHEST_GAIN_DBI, "dBi", default=None)
     azimuth_beamwidth_deg: float | None = _number(1, 360, "deg", default=None, below=True)
     elevation_beamwidth_deg: float | None = _number(0.5, 180, "deg", default=None, below=True)
@@ -141,8 +160,21 @@ class AntennaTable(Table):
     k_a: float | None = _number(0, 1, default=None)
     k_h: float | None = _number(0, 1, default=None)
     k_v: float | None = _number(0, 1, default=None)
+    k: float | None = _number(0, 1, default=None)
     front_to_back_db: float | None = _number(3, 100, "dB", default=None)
     side_lobe_db: float | None = _number(3, 100, "dB", default=None)
+    diameter_m: float | None = _number(0.01, LARGEST_DIAMETER_M, "m", default=None)
+    rows: int | None = _whole_number(1, MOST_ELEMENTS, default=None)
+    columns: int | None = _whole_number(1, MOST_ELEMENTS, default=None)
+    row_spacing_wavelengths: float | None = _number(*SPACINGS_WAVELENGTHS, default=None)
+    column_spacing_wavelengths: float | None = _number(*SPACINGS_WAVELENGTHS, default=None)
+    beam_azimuth_offset_deg: float | None = _number(
+        -WIDEST_STEERING_DEG, WIDEST_STEERING_DEG, "deg", default=None
+    )
+    element_azimuth_beamwidth_deg: float | None = _number(1, 360, "deg", default=None, below=True)
+    element_elevation_beamwidth_deg: float | None = _number(
+        0.5, 180, "deg", default=None, below=True
+    )
     largest_dimension_m: float | None = _number(0.01, 50, "m", default=None)
 
 

@@ -67,8 +67,8 @@ def pattern_of(
 
     Returns
     -------
-    Pattern. ``carried_downtilt_deg`` is the tilt that its levels hold, ``kind`` is "envelope" where
-    the file says so, ``notes`` hold the file's warnings and what was chosen.
+    Pattern. ``electrical_downtilt_deg`` is the tilt that its levels hold, ``kind`` is "envelope"
+    where the file says so, ``notes`` hold the file's warnings and what was chosen.
 
     Raises
     ------
@@ -95,7 +95,7 @@ def pattern_of(
         raise PatternError(Problem(where=where, found="nothing", allowed=allowed, advice=advice))
     kind: PatternKind = "envelope" if file.header.kind == "envelope" else "measured"
     pattern = _built(file, cuts, name=name, gain_dbi=gain, notes=tuple(notes))
-    return replace(pattern, kind=kind, carried_downtilt_deg=_carried_downtilt_deg(file, cuts))
+    return replace(pattern, kind=kind, electrical_downtilt_deg=_carried_downtilt_deg(file, cuts))
 
 
 def gain_at_dbi(
