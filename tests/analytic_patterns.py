@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from planner.antenna.pattern import Pattern
+from planner.antenna.pattern import Pattern, PatternKind
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -16,11 +16,14 @@ class Analytic(Pattern):
     gain_dbi: float = 0.0
     azimuth_beamwidth_deg: float = 90.0
     elevation_beamwidth_deg: float = 90.0
+    kind: PatternKind = "model"
     intensity: Callable
 
-    def gain(self, azimuth_offset_deg, elevation_deg, *, electrical_downtilt_deg=0.0):
+    def gain(self, azimuth_offset_deg, elevation_deg, *, electrical_downtilt_deg=None):
         azimuth = np.radians(np.asarray(azimuth_offset_deg, dtype=float))
-        elevation = np.radians(np.asarray(elevation_deg, dtype=float) + electrical_downtilt_deg)
+        elevation = np.radians(
+            np.asarray(elevation_deg, dtype=float) + self.steering_deg(electrical_downtilt_deg)
+        )
         azimuth, elevation = np.broadcast_arrays(azimuth, elevation)
         with np.errstate(divide="ignore", invalid="ignore"):
             return self.gain_dbi + 10.0 * np.log10(self.intensity(azimuth, elevation))

@@ -18,8 +18,14 @@ from pattern_texts import (
     written,
 )
 
-from planner.antenna import GridPattern
+from planner.antenna import GridPattern, Pattern
+from planner.antenna.two_cut import REAR_NOTE
 from planner.io.pattern_files import PatternFile, read_pattern, read_pattern_file
+
+
+def said(pattern: Pattern) -> tuple[str, ...]:
+    """The notes of a pattern but for the one on what no cut tells."""
+    return tuple(note for note in pattern.notes if note != REAR_NOTE)
 
 
 def read(folder: Path, lines: list[str]) -> PatternFile:
@@ -30,7 +36,7 @@ def test_every_point_comes_back_as_gain(tmp_path: Path) -> None:
     """Gain along both cuts is the stated gain plus the level of the point."""
     pattern = read_pattern(written(tmp_path, standard()), name="panel")
     assert (pattern.name, pattern.gain_dbi, pattern.kind) == ("panel", 11.5, "measured")
-    assert pattern.notes == ()
+    assert said(pattern) == ()
     for angle in ANGLES:
         assert 11.5 + across_db(angle) == float(pattern.gain(angle, 0.0))
     for elevation in ELEVATIONS:
@@ -96,7 +102,7 @@ def test_line_ends_comments_case_and_minus_signs(tmp_path: Path, end: str) -> No
     lines[2:2] = ["", "! a line of its own"]
     lines = [line.lower() if line.startswith(("GUNITS", "PATCUT")) else line for line in lines]
     pattern = read_pattern(written(tmp_path, lines, end=end), name="panel")
-    assert pattern.notes == ()
+    assert said(pattern) == ()
     assert float(pattern.gain(-50.0, 0.0)) == 11.5 + across_db(-50)
 
 
@@ -148,7 +154,7 @@ def test_both_ends_of_the_circle(tmp_path: Path) -> None:
         levels = {a: across_db(a - 360 if a > 180 else a) for a in angles}
         lines = ["PATFRE:,5500", "NUMCUT:,2", *cut("AZ", levels), *block()[6 + len(ANGLES) :]]
         pattern = read_pattern(written(tmp_path, standard(lines)), name="panel")
-        assert pattern.notes == ()
+        assert said(pattern) == ()
         for angle in (-180.0, 180.0, 179.999, -90.0, 270.0, 0.0, 360.0):
             wrapped = (angle + 180.0) % 360.0 - 180.0
             assert float(pattern.gain(angle, 0.0)) == pytest.approx(
@@ -168,12 +174,14 @@ def test_horizontal_plane_and_cone_of_a_tilted_beam(tmp_path: Path) -> None:
         read_pattern(written(tmp_path, standard(lines, ELTILT="10")), name="panel")
         for lines in (plane, cone)
     ]
+    assert 11.5 + horizon[0.0] == pytest.approx(float(patterns[0].gain(0.0, 0.0)))
     for angle in ANGLES:
-        assert 11.5 + horizon[angle] == pytest.approx(float(patterns[0].gain(angle, 0.0)))
+        # Off the cone it is what the two cuts are put together to.
+        assert 11.5 + horizon[angle] == pytest.approx(float(patterns[0].gain(angle, 0.0)), abs=1.5)
         assert 11.5 + across_db(angle) == pytest.approx(float(patterns[1].gain(angle, -tilt)))
-    (note,) = patterns[0].notes
+    (note,) = said(patterns[0])
     assert note.startswith("panel.txt: the horizontal cut reaches -1.33 dB, as the vertical cut")
-    assert patterns[1].notes == ()
+    assert said(patterns[1]) == ()
 
 
 def sphere(angles: dict[float, float]) -> list[str]:
@@ -196,8 +204,8 @@ def test_a_sphere_of_cuts(tmp_path: Path, from_zenith: bool) -> None:
     expected = [beam_db(a, e) for a, e in zip(azimuths.flat, elevations.flat, strict=True)]
     got = pattern.gain(azimuths, elevations) - 11.5
     np.testing.assert_allclose(got.ravel(), expected, rtol=0.0, atol=1e-9)
-    assert len(pattern.notes) == int(from_zenith)
-    assert not from_zenith or "counted from the zenith" in pattern.notes[0]
+    assert len(said(pattern)) == int(from_zenith)
+    assert not from_zenith or "counted from the zenith" in said(pattern)[0]
 
 
 def test_a_sphere_of_full_circles(tmp_path: Path) -> None:
@@ -211,7 +219,7 @@ def test_a_sphere_of_full_circles(tmp_path: Path) -> None:
             levels[angle] = beam_db(azimuth + 180 * behind, folded)
         lines += cut(f"{azimuth}", levels)
     pattern = read_pattern(written(tmp_path, standard(lines)), name="dish")
-    assert pattern.notes == ()
+    assert said(pattern) == ()
     for azimuth, elevation in ((0, 0), (180, 0), (-165, 20), (195, -40), (30, 80)):
         expected = 11.5 + beam_db(azimuth, elevation)
         assert float(pattern.gain(azimuth, elevation)) == pytest.approx(expected, abs=1e-9)

@@ -115,6 +115,13 @@ def _check_antennas(findings: Findings, rest: Rest) -> None:
                 _, gain = table_and_field((*place, "gain_dbi"))
                 allowed = (gain.description or "") if gain is not None else ""
                 findings.add((*place, "gain_dbi"), found="nothing", allowed=allowed)
+            if antenna.get("interpolation") is not None:
+                findings.add(
+                    (*place, "interpolation"),
+                    found=shown(antenna["interpolation"]),
+                    allowed="nothing: a formula holds in every direction",
+                    advice="Leave the key out",
+                )
         elif sources == ["file"]:
             for key in antenna:
                 own = ("file", "gain_dbi", "interpolation", *NOT_OF_THE_PATTERN)
